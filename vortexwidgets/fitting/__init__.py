@@ -1,0 +1,1 @@
+"""Which vortex it was."""

@@ -1,0 +1,1 @@
+"""What a vortex is: models, their derivations and kernels."""
