@@ -9,69 +9,33 @@ from functools import cached_property
 from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
-from vortexwidgets.uncertainty import Estimate, Given, as_estimate
+from vortexwidgets.survey.samples import (
+    BoolArray,
+    Component,
+    DroppedRow,
+    FloatArray,
+    Provenance,
+    SurveyError,
+    check_indices,
+    check_samples,
+    checked_facts,
+    factor_of_one,
+    own_column,
+    stacked_columns,
+    stated_estimate,
+)
+from vortexwidgets.uncertainty import Estimate, Given
 
 if TYPE_CHECKING:
     from vortexwidgets.models.vortex import Vortex
 
-FloatArray = NDArray[np.float64]
-BoolArray = NDArray[np.bool_]
+__all__ = ["DroppedRow", "Geometry", "Provenance", "Survey", "SurveyError"]
+
 Geometry = Literal["radial", "traverse", "plane"]
-
-FEWEST_SAMPLES = 3
-"""Circulation, core radius and one position of the axis: fewer samples leave nothing to fit."""
-
-FASTEST = 1e5
-"""[m/s] A larger velocity is a wrong unit or a marker of an instrument, not a flow."""
-
-FARTHEST = 1e7
-"""[m] A larger coordinate is a wrong unit."""
-
-FACT_QUANTITIES: dict[str, str] = {
-    "temperature": "temperature",
-    "salinity": "salinity",
-    "ambient_pressure": "ambient_pressure",
-    "surface_pressure": "surface_pressure",
-    "depth": "depth",
-    "free_stream": "free_stream",
-    "elevation": "elevation",
-    "gravity": "gravity",
-    "wander": "wander",
-    "probe_width": "probe_width",
-    "translation_speed": "translation_speed",
-    "length_scale": "length_scale",
-    "reference_radius": "reference_radius",
-    "tensile_strength": "tensile_strength",
-}
-"""Facts that are numbers, and the quantity (SI unit, valid range) each of them is."""
-
-
-class SurveyError(ValueError):
-    """A survey cannot be read or used; the message says where, what was found and what to do."""
-
-
-@dataclass(frozen=True)
-class DroppedRow:
-    """One row that is not in the survey, and why.
-
-    `row` is the line of the file as an editor counts it, or the index of the sample where arrays were given.
-    """
-
-    row: int
-    reason: str
-
-
-@dataclass(frozen=True)
-class Provenance:
-    """Where a survey comes from and what was done to it on the way in."""
-
-    file: str = ""
-    sha256: str = ""
-    columns: tuple[str, ...] = ()
-    dropped: tuple[DroppedRow, ...] = ()
-    notes: tuple[str, ...] = ()
+UNIT_GAIN = Estimate(1.0, 0.0, "velocity_gain")
+UNIT_SCALE = Estimate(1.0, 0.0, "position_scale")
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -91,7 +55,7 @@ class Survey:
     velocity : array_like, shape (N,)
         Measured component. [m/s]
     uncertainty : array_like, shape (N,), optional
-        Standard uncertainty (k = 1) of each sample, independent of the others; None when the scatter is not known. [m/s]
+        Standard uncertainty (k = 1) of each sample, independent; None when the scatter is not known. [m/s]
     set_aside : mapping of int to str
         Samples that are kept but not used, with the reason.
     geometry : {"radial", "traverse", "plane"}
@@ -101,7 +65,7 @@ class Survey:
     velocity_gain, position_scale : number, (value, standard uncertainty) or Estimate
         1 with the standard uncertainty that is common to all velocities or to all positions. It does not average out.
     facts : mapping
-        What is known about the test: title, fluid, temperature [K], ambient_pressure [Pa], free_stream [m/s], ... in SI.
+        What is known about the test: title, fluid, temperature [K], ambient_pressure [Pa], free_stream [m/s], ... (SI).
     pressure, pressure_uncertainty : array_like, shape (N,), optional
         Static pressure measured at the samples, NaN where there is none. [Pa]
     provenance : Provenance
@@ -121,31 +85,32 @@ class Survey:
     set_aside: Mapping[int, str] = field(default_factory=dict)
     geometry: Geometry
     miss_distance: Estimate | None = None
-    velocity_gain: Estimate = Estimate(1.0, 0.0, "velocity_gain")
-    position_scale: Estimate = Estimate(1.0, 0.0, "position_scale")
+    velocity_gain: Estimate = UNIT_GAIN
+    position_scale: Estimate = UNIT_SCALE
     facts: Mapping[str, str | float | Estimate] = field(default_factory=dict)
     pressure: FloatArray | None = None
     pressure_uncertainty: FloatArray | None = None
-    provenance: Provenance = Provenance()
+    provenance: Provenance = field(default_factory=Provenance)
 
     def __post_init__(self) -> None:
         number = np.size(self.velocity)
         for name in ("x", "y", "velocity", "uncertainty", "pressure", "pressure_uncertainty"):
             given = getattr(self, name)
             if given is not None:
-                object.__setattr__(self, name, _frozen(given, (number,), name))
-        object.__setattr__(self, "direction", _frozen(self.direction, (number, 3), "direction"))
+                object.__setattr__(self, name, own_column(given, (number,), name))
+        object.__setattr__(self, "direction", own_column(self.direction, (number, 3), "direction"))
         if self.geometry not in ("radial", "traverse", "plane"):
             raise SurveyError(f"geometry must be radial, traverse or plane, got {self.geometry!r}.")
-        _check_samples(self)
+        columns = ("x", "y", "direction", "velocity", "uncertainty", "pressure_uncertainty")
+        check_samples({name: getattr(self, name) for name in columns}, len(self.set_aside))
         for name in ("velocity_gain", "position_scale"):
-            object.__setattr__(self, name, _factor_of_one(getattr(self, name), name))
+            object.__setattr__(self, name, factor_of_one(getattr(self, name), name))
         if self.miss_distance is not None:
-            object.__setattr__(self, "miss_distance", _estimate(self.miss_distance, "miss_distance"))
+            object.__setattr__(self, "miss_distance", stated_estimate(self.miss_distance, "miss_distance"))
         aside = {int(index): str(reason) for index, reason in sorted(self.set_aside.items())}
-        _check_indices(aside, number)
+        check_indices(aside, number)
         object.__setattr__(self, "set_aside", aside)
-        object.__setattr__(self, "facts", _facts(self.facts))
+        object.__setattr__(self, "facts", checked_facts(self.facts))
 
     @classmethod
     def radial(
@@ -197,8 +162,8 @@ class Survey:
                 f"radius must not be negative, got {distance.min():g} m; for positions on both sides of the axis use "
                 "Survey.traverse, which finds the centre."
             )
-        components = [(swirl, (0.0, 1.0, 0.0), "swirl"), (axial, (0.0, 0.0, 1.0), "axial")]
-        stacked = _stack(distance, np.zeros_like(distance), components, uncertainty, pressure, provenance)
+        components: list[Component] = [(swirl, (0.0, 1.0, 0.0), "swirl"), (axial, (0.0, 0.0, 1.0), "axial")]
+        stacked = stacked_columns(distance, np.zeros_like(distance), components, uncertainty, pressure, provenance)
         return cls(
             geometry="radial", velocity_gain=velocity_gain, position_scale=position_scale, facts=facts, **stacked
         )
@@ -221,7 +186,7 @@ class Survey:
     ) -> Survey:
         """Velocity across a straight line, positive to the left of increasing position; the centre is not known.
 
-        The line is the x axis. The line may miss the axis of the vortex: the component along the line shows by how much.
+        The line is the x axis. The line may miss the axis of the vortex: the component along it shows by how much.
 
         Parameters
         ----------
@@ -232,7 +197,7 @@ class Survey:
         uncertainty : number or array_like, shape (N,) or (components, N), optional
             Standard uncertainty of each sample; components in the order velocity, along, axial. [m/s]
         along, axial : array_like, shape (N,), optional
-            Component along the line, positive with increasing position, and component along the axis of the vortex. [m/s]
+            Component along the line, positive with increasing position, and along the axis of the vortex. [m/s]
         miss_distance : number, (value, standard uncertainty) or Estimate, optional
             Distance between the line and the axis when it is known. [m]
         velocity_gain, position_scale, pressure, provenance, **facts
@@ -254,15 +219,15 @@ class Survey:
         (6, 3, True)
         """
         line = np.ravel(np.asarray(position, dtype=float))
-        components = [
+        components: list[Component] = [
             (velocity, (0.0, 1.0, 0.0), "velocity"),
             (along, (1.0, 0.0, 0.0), "along"),
             (axial, (0.0, 0.0, 1.0), "axial"),
         ]
-        stacked = _stack(line, np.zeros_like(line), components, uncertainty, pressure, provenance)
+        stacked = stacked_columns(line, np.zeros_like(line), components, uncertainty, pressure, provenance)
         return cls(
             geometry="traverse",
-            miss_distance=None if miss_distance is None else _estimate(miss_distance, "miss_distance"),
+            miss_distance=None if miss_distance is None else stated_estimate(miss_distance, "miss_distance"),
             velocity_gain=velocity_gain,
             position_scale=position_scale,
             facts=facts,
@@ -285,11 +250,11 @@ class Survey:
         pressure: ArrayLike | None = None,
         **facts: Any,
     ) -> Survey:
-        """Velocity vectors in a plane across the axis, x to the right, y upwards, circulation counter-clockwise positive.
+        """Velocity vectors in a plane across the axis, x to the right, y up; circulation is positive counter-clockwise.
 
         Parameters
         ----------
-        x, y : array_like, shape (N,) or (rows, columns); or shape (columns,) and (rows,) with u of shape (rows, columns)
+        x, y : array_like, shape (N,) or (rows, columns); or (columns,) and (rows,) with u of shape (rows, columns)
             Positions. [m]
         u, v, w : array_like
             Components along x, y and the axis of the vortex; vectors with NaN are left out and listed. [m/s]
@@ -321,8 +286,8 @@ class Survey:
             raise SurveyError(
                 f"x has shape {across.shape} and y has shape {up.shape}; give one x and one y per vector."
             )
-        components = [(u, (1.0, 0.0, 0.0), "u"), (v, (0.0, 1.0, 0.0), "v"), (w, (0.0, 0.0, 1.0), "w")]
-        stacked = _stack(across.ravel(), up.ravel(), components, uncertainty, pressure, provenance)
+        components: list[Component] = [(u, (1.0, 0.0, 0.0), "u"), (v, (0.0, 1.0, 0.0), "v"), (w, (0.0, 0.0, 1.0), "w")]
+        stacked = stacked_columns(across.ravel(), up.ravel(), components, uncertainty, pressure, provenance)
         return cls(geometry="plane", velocity_gain=velocity_gain, position_scale=position_scale, facts=facts, **stacked)
 
     @classmethod
@@ -457,7 +422,7 @@ class Survey:
     def with_samples(self, indices: Iterable[int]) -> Survey:
         """Survey with some of the samples that were set aside in use again."""
         back = {int(index) for index in indices}
-        _check_indices(back, self.velocity.size)
+        check_indices(back, self.velocity.size)
         return dataclasses.replace(self, set_aside={i: why for i, why in self.set_aside.items() if i not in back})
 
     def with_all(self) -> Survey:
@@ -490,154 +455,6 @@ class Survey:
         if self.provenance.dropped:
             parts.append(f"{len(self.provenance.dropped)} rows dropped")
         return (f"{title}: " if title else "") + ", ".join(parts)
-
-
-def _frozen(values: ArrayLike, shape: tuple[int, ...], name: str) -> FloatArray:
-    """Own read-only copy of the right shape."""
-    array = np.array(values, dtype=float)
-    if array.shape != shape:
-        raise SurveyError(f"{name} has shape {array.shape}, expected {shape}: one entry per sample.")
-    array.setflags(write=False)
-    return array
-
-
-def _check_samples(survey: Survey) -> None:
-    """Say what is wrong with the numbers of a survey."""
-    limits = (("x", FARTHEST, "m"), ("y", FARTHEST, "m"), ("velocity", FASTEST, "m/s"), ("direction", 1.0 + 1e-9, ""))
-    for name, limit, unit in limits:
-        values = getattr(survey, name).reshape(survey.velocity.size, -1)
-        bad = np.flatnonzero(~(np.abs(values) <= limit).all(axis=1))
-        if bad.size:
-            value = values[bad[0]][~(np.abs(values[bad[0]]) <= limit)][0]
-            raise SurveyError(
-                f"{name} of sample {bad[0]} is {value:g} {unit}".rstrip()
-                + f", beyond anything that is measured (limit {limit:g} {unit}".rstrip()
-                + "); check the unit, or leave the sample out."
-            )
-    if survey.velocity.size - len(survey.set_aside) < FEWEST_SAMPLES:
-        left = survey.velocity.size - len(survey.set_aside)
-        raise SurveyError(f"the survey has {left} samples in use; at least {FEWEST_SAMPLES} are needed, add points.")
-    if np.ptp(survey.x) == 0.0 and np.ptp(survey.y) == 0.0:
-        raise SurveyError(
-            f"all {survey.x.size} samples are at the same position ({survey.x[0]:g} m); a survey needs positions that differ."
-        )
-    lengths = np.linalg.norm(survey.direction, axis=1)
-    if np.any(np.abs(lengths - 1.0) > 1e-9):
-        worst = int(np.argmax(np.abs(lengths - 1.0)))
-        raise SurveyError(f"direction of sample {worst} has length {lengths[worst]:g}; give unit vectors.")
-    for name, unit in (("uncertainty", "m/s"), ("pressure_uncertainty", "Pa")):
-        values = getattr(survey, name)
-        if values is None:
-            continue
-        bad = np.flatnonzero(~((values > 0.0) & np.isfinite(values)) if name == "uncertainty" else values < 0.0)
-        if bad.size:
-            raise SurveyError(
-                f"{name} must be positive, got {values[bad[0]]:g} {unit} at sample {bad[0]}; give the standard uncertainty, "
-                "or leave all uncertainties out to have the scatter estimated from the fit."
-            )
-
-
-def _check_indices(indices: Iterable[int], number: int) -> None:
-    for index in indices:
-        if not 0 <= index < number:
-            raise SurveyError(f"there is no sample {index}; the survey has samples 0 to {number - 1}.")
-
-
-def _estimate(given: Given, quantity: str) -> Estimate:
-    """Turn a person's number into an Estimate; a wrong one is the survey's fault."""
-    try:
-        return as_estimate(given, quantity)
-    except ValueError as error:
-        raise SurveyError(str(error)) from error
-
-
-def _factor_of_one(given: Given, quantity: str) -> Estimate:
-    estimate = _estimate(given, quantity)
-    if estimate.value != 1.0:
-        raise SurveyError(
-            f"{quantity} must be 1 with its standard uncertainty, got {estimate.value:g}; correct the "
-            f"{'velocities' if quantity == 'velocity_gain' else 'positions'} first, then state {quantity}=(1, uncertainty)."
-        )
-    return estimate
-
-
-def _facts(facts: Mapping[str, Any]) -> dict[str, str | float | Estimate]:
-    """Facts as text, numbers and Estimates; the numbers that are quantities are checked."""
-    checked: dict[str, str | float | Estimate] = {}
-    for name, value in facts.items():
-        if isinstance(value, str):
-            checked[name] = value
-        elif name in FACT_QUANTITIES:
-            checked[name] = _estimate(value, FACT_QUANTITIES[name])
-        elif isinstance(value, Estimate):
-            checked[name] = value
-        elif isinstance(value, int | float | np.floating | np.integer):
-            checked[name] = float(value)
-        else:
-            raise SurveyError(f"fact {name} must be text or a number, got {value!r}.")
-    return checked
-
-
-def _stack(
-    x: FloatArray,
-    y: FloatArray,
-    components: list[tuple[ArrayLike | None, tuple[float, float, float], str]],
-    uncertainty: ArrayLike | None,
-    pressure: ArrayLike | None,
-    provenance: Provenance | None,
-) -> dict[str, Any]:
-    """Fields of a survey from one array per component; stations with a missing value are left out and listed."""
-    given = [
-        (np.asarray(values, dtype=float).ravel(), vector, name)
-        for values, vector, name in components
-        if values is not None
-    ]
-    for values, _, name in given:
-        if values.shape != x.shape:
-            raise SurveyError(f"{name} has {values.size} values for {x.size} positions; give one value per position.")
-    spread = _spread(uncertainty, len(given), x.size)
-    static = None if pressure is None else np.asarray(pressure, dtype=float).ravel()
-    if static is not None and static.shape != x.shape:
-        raise SurveyError(
-            f"pressure has {static.size} values for {x.size} positions; give one value per position, NaN if none."
-        )
-    swirl = [values for values, vector, _ in given if vector[2] == 0.0]
-    complete = np.isfinite(x) & np.isfinite(y) & np.all(np.isfinite(swirl), axis=0)
-    kept: list[tuple[FloatArray, ...]] = []
-    for row, (values, vector, _) in enumerate(given):
-        mask = complete & np.isfinite(values)
-        share = np.full(x.size, np.nan) if spread is None else spread[row]
-        tap = np.full(x.size, np.nan) if static is None else static
-        directions = np.tile(np.asarray(vector), (int(mask.sum()), 1))
-        kept.append((x[mask], y[mask], directions, values[mask], share[mask], tap[mask]))
-    origin = provenance or Provenance()
-    lost = tuple(DroppedRow(int(index), "a value is missing") for index in np.flatnonzero(~complete))
-    stacked = [np.concatenate(parts) for parts in zip(*kept, strict=True)]
-    return {
-        "x": stacked[0],
-        "y": stacked[1],
-        "direction": stacked[2],
-        "velocity": stacked[3],
-        "uncertainty": None if spread is None else stacked[4],
-        "pressure": None if static is None else stacked[5],
-        "provenance": dataclasses.replace(origin, dropped=(*origin.dropped, *lost)),
-    }
-
-
-def _spread(uncertainty: ArrayLike | None, components: int, number: int) -> FloatArray | None:
-    """Standard uncertainties, shape (components, number)."""
-    if uncertainty is None:
-        return None
-    given = np.asarray(uncertainty, dtype=float)
-    if given.ndim == 2 and given.shape != (components, number):
-        given = given.ravel()
-    try:
-        return np.array(np.broadcast_to(given, (components, number)))
-    except ValueError:
-        raise SurveyError(
-            f"uncertainty has shape {np.shape(uncertainty)} for {components} components at {number} positions; give one "
-            "number, one per position, or one row per component."
-        ) from None
 
 
 def _same(one: object, other: object) -> bool:
