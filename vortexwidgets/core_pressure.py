@@ -2,12 +2,30 @@
 
 from __future__ import annotations
 
+import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+import numpy as np
+import numpy.typing as npt
+
+from vortexwidgets.uncertainty import Contribution, Estimate, from_draws
+
 if TYPE_CHECKING:
+    from vortexwidgets.fitting.ranking import Ranked
+    from vortexwidgets.fitting.result import Fit
     from vortexwidgets.models.vortex import Vortex
-    from vortexwidgets.uncertainty import Estimate
+    from vortexwidgets.survey.survey import Survey
+
+FloatArray = npt.NDArray[np.float64]
+
+INSTANTANEOUS = "instantaneous vortex"
+TAP = "mean pressure at a fixed point"
+MEAN_PROFILE = "mean profile"
+
+_DRAWS = 20_000
+_SEED = 20_260_101  # fixed: the same survey gives the same record
 
 
 @dataclass(frozen=True)
@@ -47,3 +65,442 @@ class Core:
     peak_radius: Estimate
     density: Estimate
     missed_axis: bool
+
+
+# The vortex alone ---------------------------------------------------------------------------------------------------
+
+
+def share_beyond(vortex: Vortex, radius: float) -> float:
+    """Share of the core pressure drop that comes from beyond a radius.
+
+    Parameters
+    ----------
+    vortex : Vortex
+        With a finite core pressure drop.
+    radius : float
+        Distance from the axis. [m]
+
+    Returns
+    -------
+    float
+        Between 0 and 1.
+
+    Examples
+    --------
+    A Rankine vortex has half of its drop outside the core (derived: 1/2 at the peak radius).
+
+    >>> from vortexwidgets import Vortex
+    >>> share_beyond(Vortex("rankine", circulation=1.0, core_radius=0.01), 0.01)
+    0.5
+    """
+    return float(vortex.pressure_drop(radius, density=1.0)) / float(vortex.pressure_drop(0.0, density=1.0))
+
+
+def mean_swirl(vortex: Vortex, radius: npt.ArrayLike, *, wander: float) -> FloatArray:
+    r"""Mean swirl at fixed points while the vortex wanders. [m/s]
+
+    Parameters
+    ----------
+    vortex : Vortex
+        The instantaneous vortex.
+    radius : array_like, shape (...)
+        Distance from the mean axis. [m]
+    wander : float
+        Standard deviation of the axis along one direction, equal in both. [m]
+
+    Returns
+    -------
+    ndarray, shape of `radius`
+        Mean azimuthal velocity.
+
+    Notes
+    -----
+    Gaussian average of the velocity vector over the plane,
+    :math:`\bar v(r) = \int_0^\infty v(s)\,(s/\sigma^2)\,e^{-(r^2+s^2)/2\sigma^2} I_1(rs/\sigma^2)\,ds`, for any profile.
+
+    References
+    ----------
+    .. [1] W. J. Devenport, M. C. Rife, S. I. Liapis and G. J. Follin, J. Fluid Mech. 312 (1996) 67-106.
+    """
+    from scipy.special import ive
+
+    points = np.atleast_1d(np.asarray(radius, dtype=float))
+    if wander == 0.0:
+        return np.reshape(vortex.swirl(points), np.shape(radius))
+    result = np.empty(points.size)
+    node, weight = np.polynomial.legendre.leggauss(24)
+    for number, r in enumerate(points.ravel()):
+        edges = _panels(max(r - 9.0 * wander, 0.0), r + 9.0 * wander, vortex.core_radius, 24)
+        s = 0.5 * (edges[1:] + edges[:-1])[:, None] + 0.5 * np.diff(edges)[:, None] * node
+        w = 0.5 * np.diff(edges)[:, None] * weight
+        kernel = s / wander**2 * np.exp(-((r - s) ** 2) / (2.0 * wander**2)) * ive(1, r * s / wander**2)
+        result[number] = float(np.sum(w * vortex.swirl(s) * kernel))
+    return np.reshape(result, np.shape(radius))
+
+
+def core_drops(vortex: Vortex, *, density: float, wander: float = 0.0) -> dict[str, float]:
+    """The three core pressure drops of a vortex that wanders. [Pa]
+
+    Parameters
+    ----------
+    vortex : Vortex
+        The instantaneous vortex.
+    density : float
+        [kg/m³]
+    wander : float
+        Standard deviation of the axis along one direction. [m]
+
+    Returns
+    -------
+    dict
+        "instantaneous vortex": on the moving axis, what a bubble feels; "mean pressure at a fixed point": what a wall tap
+        or a slow probe reads at the mean centre; "mean profile": what integrating the mean swirl gives.
+
+    Notes
+    -----
+    The three are equal without wander. Cavitation takes the first; a measured pressure is compared with the second.
+    """
+    deepest = float(vortex.pressure_drop(0.0, density=density))
+    if wander == 0.0:
+        return {INSTANTANEOUS: deepest, TAP: deepest, MEAN_PROFILE: deepest}
+    node, weight = np.polynomial.legendre.leggauss(24)
+    edges = _panels(0.0, 9.0 * wander, vortex.core_radius, 24)
+    s = 0.5 * (edges[1:] + edges[:-1])[:, None] + 0.5 * np.diff(edges)[:, None] * node
+    w = 0.5 * np.diff(edges)[:, None] * weight
+    chance = s / wander**2 * np.exp(-(s**2) / (2.0 * wander**2))
+    tap = float(np.sum(w * chance * vortex.pressure_drop(s, density=density)))
+    far = 40.0 * (vortex.core_radius + wander)
+    log_edges = np.linspace(math.log(1e-4 * (vortex.core_radius + wander)), math.log(far), 15)
+    half = 0.5 * np.diff(log_edges)[:, None]
+    log_r = 0.5 * (log_edges[1:] + log_edges[:-1])[:, None] + half * node[None, :]
+    mean = mean_swirl(vortex, np.exp(log_r), wander=wander)
+    naive = density * float(np.sum(half * weight * mean**2)) + float(vortex.pressure_drop(far, density=density))
+    return {INSTANTANEOUS: deepest, TAP: tap, MEAN_PROFILE: naive}
+
+
+def _panels(low: float, high: float, break_point: float, number: int) -> FloatArray:
+    """Edges of equal panels, with one at a kink of the profile."""
+    edges = np.linspace(low, high, number + 1)
+    if low < break_point < high:
+        edges = np.unique(np.append(edges, break_point))
+    return edges
+
+
+# The fits -----------------------------------------------------------------------------------------------------------
+
+
+def combined_drop(
+    rows: Sequence[Ranked], *, density: Estimate, gain: Estimate, beyond: float | None = None
+) -> tuple[Estimate, tuple[float, float]]:
+    """Weighted core pressure drop of the models that are not rejected, and its envelope over them. [Pa]
+
+    Parameters
+    ----------
+    rows : sequence of Ranked
+        Models that the data do not reject, with their weights.
+    density, gain : Estimate
+        Density [kg/m³] and velocity gain, whose uncertainties are common to all samples.
+    beyond : float, optional
+        Reference radius; the drop is then relative to the pressure there. [m]
+
+    Returns
+    -------
+    Estimate, tuple
+        With u² = Σ w (u_i² + (Δp_i - mean)²) and the gain's 2 u(g), and a budget that names the contributions; the
+        lowest and highest single-model drop.
+    """
+    drops = [row.fit.core_pressure_drop(density.value) for row in rows]
+    if beyond is not None:
+        drops = [_scaled(drop, 1.0 - share_beyond(row.fit.vortex, beyond)) for drop, row in zip(drops, rows, strict=True)]
+    bounds = [drop for drop in drops if drop.bound is not None]
+    if bounds:
+        # One profile that leaves the core open leaves the answer open: the shallowest of all lower limits stands.
+        lowest = min(drop.value if drop.bound else drop.interval(0.95)[0] for drop in drops)
+        relative = 1.96 * math.hypot(2.0 * gain.uncertainty, density.uncertainty / density.value)
+        lowest *= max(1.0 - relative, 0.0)
+        return Estimate(lowest, math.nan, "core_pressure_drop", bound="lower"), (lowest, math.inf)
+    values = np.array([drop.value for drop in drops])
+    own = np.array([drop.uncertainty for drop in drops])
+    weights = np.array([row.weight for row in rows])
+    weights = weights / weights.sum()
+    mean = float(weights @ values)
+    budget = (
+        Contribution("scatter of the samples", math.sqrt(float(weights @ own**2))),
+        Contribution("choice of model", math.sqrt(float(weights @ (values - mean) ** 2))),
+        Contribution("velocity gain", 2.0 * gain.uncertainty * mean),
+        Contribution("density", density.uncertainty / density.value * mean),
+    )
+    generator = np.random.default_rng(_SEED)
+    share = np.floor(weights * _DRAWS).astype(int)
+    share[int(weights.argmax())] += _DRAWS - int(share.sum())
+    draws = np.concatenate([_spread(drop, int(n), generator) for drop, n in zip(drops, share, strict=True) if n])
+    draws = draws * np.exp(2.0 * gain.uncertainty * generator.standard_normal(_DRAWS))
+    draws = draws * np.exp(density.uncertainty / density.value * generator.standard_normal(_DRAWS))
+    total = math.sqrt(sum(part.uncertainty**2 for part in budget))
+    quantiles = from_draws(draws, "core_pressure_drop").quantiles
+    estimate = Estimate(mean, total, "core_pressure_drop", budget=budget, quantiles=quantiles)
+    return estimate, (float(values.min()), float(values.max()))
+
+
+def _spread(estimate: Estimate, number: int, generator: np.random.Generator) -> FloatArray:
+    return np.asarray(estimate.draw(number, generator), dtype=float)
+
+
+def _scaled(estimate: Estimate, factor: float) -> Estimate:
+    """An estimate times an exact positive factor."""
+    quantiles = None if estimate.quantiles is None else tuple(q * factor for q in estimate.quantiles)
+    budget = tuple(Contribution(part.name, part.uncertainty * factor) for part in estimate.budget)
+    return Estimate(
+        estimate.value * factor,
+        estimate.uncertainty * factor,
+        estimate.quantity,
+        budget=budget,
+        quantiles=quantiles,
+        bound=estimate.bound,
+    )
+
+
+def named_drops(drop: Estimate, vortex: Vortex, *, wander: float) -> tuple[CoreDrop, CoreDrop, CoreDrop]:
+    """The three core drops as estimates, each the instantaneous one times its fraction for this wander."""
+    fractions = core_drops(vortex, density=1.0, wander=wander)
+    deepest = fractions[INSTANTANEOUS]
+    stated = "" if wander > 0.0 else " Wander is not stated, so it is taken as none and the three are equal."
+    texts = {
+        INSTANTANEOUS: "On the moving axis of the vortex; cavitation takes this one." + stated,
+        TAP: "What a wall tap or a slow probe reads at the mean centre; fluctuation beyond wander is not included.",
+        MEAN_PROFILE: "What integrating the mean swirl profile gives; too shallow where the vortex wanders.",
+    }
+    rows = [
+        CoreDrop(name, _scaled(drop, fractions[name] / deepest), texts[name])
+        for name in (INSTANTANEOUS, TAP, MEAN_PROFILE)
+    ]
+    return rows[0], rows[1], rows[2]
+
+
+def core_pressure_of(drop: Estimate, ambient: Estimate, *, heat_capacity_ratio: float | None = None) -> Estimate:
+    """Absolute pressure on the axis. [Pa]
+
+    Parameters
+    ----------
+    drop : Estimate
+        Core pressure drop at constant density. [Pa]
+    ambient : Estimate
+        Absolute pressure at the elevation of the axis, far away. [Pa]
+    heat_capacity_ratio : float, optional
+        Of a gas: the drop is then taken through the isentropic relation of a perfect gas.
+
+    Returns
+    -------
+    Estimate
+        A lower bound of the drop makes it an upper bound.
+
+    Notes
+    -----
+    Gas: p(0) = p∞ [1 - (γ-1)/γ · Δp/p∞]^(γ/(γ-1)), cyclostrophic balance with p/ρ^γ constant. It reaches a vacuum at a finite
+    drop; beyond that the pressure is given as zero.
+    """
+
+    def pressure(far: FloatArray | float, fall: FloatArray | float) -> FloatArray:
+        if heat_capacity_ratio is None:
+            return np.asarray(far - np.asarray(fall))
+        exponent = heat_capacity_ratio / (heat_capacity_ratio - 1.0)
+        return np.asarray(far * np.maximum(1.0 - fall / (exponent * np.asarray(far)), 0.0) ** exponent)
+
+    value = float(pressure(ambient.value, drop.value))
+    if drop.bound is not None or not math.isfinite(drop.uncertainty):
+        return Estimate(value, math.nan, "core_pressure", bound="upper" if drop.bound else None)
+    step = max(1e-4 * drop.value, 1e-9)
+    slope = abs(float(pressure(ambient.value, drop.value + step) - pressure(ambient.value, drop.value - step))) / (2 * step)
+    reference = ambient.uncertainty
+    if heat_capacity_ratio is not None:
+        d = 1e-4 * ambient.value
+        reference *= abs(float(pressure(ambient.value + d, drop.value) - pressure(ambient.value - d, drop.value))) / (2 * d)
+    budget = tuple(Contribution(part.name, part.uncertainty * slope) for part in drop.budget)
+    budget += (Contribution("reference pressure", reference),)
+    generator = np.random.default_rng(_SEED)
+    far = ambient.draw(_DRAWS, generator)
+    draws = pressure(np.asarray(far), np.asarray(drop.draw(_DRAWS, generator)))
+    return Estimate(
+        value,
+        math.sqrt(sum(part.uncertainty**2 for part in budget)),
+        "core_pressure",
+        budget=budget,
+        quantiles=from_draws(draws, "core_pressure").quantiles,
+    )
+
+
+def circulation_at(fit: Fit, radius: float) -> Estimate:
+    """Circulation within a radius, with the uncertainty of the fitted curve there. [m²/s]"""
+    from dataclasses import replace
+
+    vortex = fit.vortex
+    value = float(vortex.enclosed_circulation(radius))
+    names = [name for name in fit.names if name == "core_radius" or hasattr(vortex, name) and name != "centre"]
+    names = [name for name in fit.names if name in (fit._problem.strength_name, "core_radius", *vortex.shape)]
+    gradient = np.zeros(len(fit.names))
+    for name in names:
+        now = getattr(vortex, name) if name not in vortex.shape else vortex.shape[name]
+        step = 1e-5 * abs(now)
+        up, down = replace(vortex, **{name: now + step}), replace(vortex, **{name: now - step})
+        slope = float(up.enclosed_circulation(radius)) - float(down.enclosed_circulation(radius))
+        gradient[fit.names.index(name)] = slope / (2.0 * step)
+    used = (gradient != 0.0) & np.isfinite(fit.covariance.diagonal())
+    variance = float(gradient[used] @ fit.covariance[np.ix_(used, used)] @ gradient[used])
+    return Estimate(value, math.sqrt(max(variance, 0.0)), "enclosed_circulation")
+
+
+# The data -----------------------------------------------------------------------------------------------------------
+
+
+def data_drop(survey: Survey, fit: Fit, *, density: Estimate, model_drop: Estimate) -> DataDrop:
+    """Core pressure drop straight from the samples, as a cross-check on the models. [Pa]
+
+    Parameters
+    ----------
+    survey : Survey
+        Included in-plane samples are used.
+    fit : Fit
+        Gives the centre and the background, nothing else.
+    density : Estimate
+        [kg/m³]
+    model_drop : Estimate
+        What the models say, for the comparison. [Pa]
+
+    Returns
+    -------
+    DataDrop
+        With its shares: the measured range Σ (v² - u²) Δln r, a solid-body cap ½ρv² within the innermost station, and the tail
+        ½ρv² of constant circulation beyond the outermost one.
+
+    Notes
+    -----
+    Noise adds its variance to v², so u² is taken off. Samples are averaged in rings first. The cap is the smallest drop a
+    monotonic swirl can have there.
+    """
+    radius, swirl, noise = _swirl_of_samples(survey, fit)
+    ring_r, ring_v, ring_u = _rings(radius, swirl, noise)
+    square = ring_v**2 - ring_u**2
+    log_r = np.log(ring_r)
+    measured = float(np.sum(0.5 * (square[1:] + square[:-1]) * np.diff(log_r)))
+    trapezoid = np.zeros(len(ring_r))
+    trapezoid[1:] += 0.5 * np.diff(log_r)
+    trapezoid[:-1] += 0.5 * np.diff(log_r)
+    towards_axis = 0.5 * float(square[0])
+    # The circulation at the edge is better known from the outer rings together than from the last one.
+    outer = ring_r >= 0.7 * ring_r[-1]
+    weight = 1.0 / np.maximum(ring_u[outer], 1e-300) ** 2
+    edge = float(np.sum(weight * ring_v[outer] * ring_r[outer]) / np.sum(weight))
+    beyond = 0.5 * (edge / ring_r[-1]) ** 2
+    slopes = 2.0 * ring_v * trapezoid
+    slopes[0] += ring_v[0]
+    noise_part = math.sqrt(float(np.sum((slopes * ring_u) ** 2)) + 2.0 * float(np.sum((trapezoid * ring_u**2) ** 2)))
+    total = density.value * (measured + towards_axis + beyond)
+    uncertainty = math.hypot(density.value * noise_part, 2.0 * survey.velocity_gain.uncertainty * total)
+    estimate = Estimate(
+        total,
+        uncertainty,
+        "core_pressure_drop",
+        budget=(
+            Contribution("scatter of the samples", density.value * noise_part),
+            Contribution("velocity gain", 2.0 * survey.velocity_gain.uncertainty * total),
+        ),
+    )
+    return DataDrop(
+        estimate,
+        density.value * measured,
+        density.value * towards_axis,
+        density.value * beyond,
+        tuple(_comparison(estimate, density.value * towards_axis, model_drop)),
+    )
+
+
+def _comparison(data: Estimate, cap: float, model: Estimate) -> list[str]:
+    sentences = []
+    share = cap / data.value if data.value > 0.0 else math.nan
+    if share > 0.3:
+        sentences.append(
+            f"{100 * share:.0f} % of the data-only drop is the cap towards the axis, which no sample measured; it is a least value."
+        )
+    if model.bound is None and math.isfinite(model.uncertainty):
+        off = data.value - model.value
+        doubt = math.hypot(data.uncertainty, model.uncertainty)
+        if abs(off) > max(3.0 * doubt, 0.08 * model.value):
+            side = "above" if off > 0.0 else "below"
+            sentences.append(
+                f"Warning: the data-only drop lies {100 * abs(off) / model.value:.0f} % {side} that of the models, more than "
+                "three combined standard uncertainties; look at the residuals near the axis before using either."
+            )
+        else:
+            sentences.append("The data-only drop agrees with the models.")
+    return sentences
+
+
+def _swirl_of_samples(survey: Survey, fit: Fit) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Radius, swirl and its standard uncertainty of the samples that see the swirl well enough."""
+    problem = fit._problem
+    chosen = survey.in_plane
+    dx, dy = survey.x[chosen] - fit.centre[0], survey.y[chosen] - fit.centre[1]
+    direction = survey.direction[chosen]
+    radius = np.hypot(dx, dy)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        seen = (dx * direction[:, 1] - dy * direction[:, 0]) / radius
+    velocity = problem.target.copy()
+    if len(problem.background):
+        velocity -= fit._solution.linear[1:] @ problem.background
+    velocity *= problem.uncertainty
+    noise = problem.uncertainty * (fit.scatter if fit.uncertainties == "relative" else 1.0)
+    good = np.abs(np.nan_to_num(seen)) > 0.5
+    return radius[good], velocity[good] / seen[good], noise[good] / np.abs(seen[good])
+
+
+def _rings(radius: FloatArray, swirl: FloatArray, noise: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Weighted means over rings that hold at least two samples and are at most 12 % wide where samples are plenty."""
+    order = np.argsort(radius)
+    radius, swirl, noise = radius[order], swirl[order], noise[order]
+    rings: list[tuple[float, float, float]] = []
+    first = 0
+    while first < len(radius):
+        last = first + 1
+        while last < len(radius) and (radius[last] <= 1.12 * radius[first] or last - first < 2):
+            last += 1
+        if len(radius) - last == 1:
+            last = len(radius)
+        part = slice(first, last)
+        weight = 1.0 / noise[part] ** 2
+        total = float(weight.sum())
+        rings.append(
+            (
+                float((weight * radius[part]).sum() / total),
+                float((weight * swirl[part]).sum() / total),
+                total**-0.5,
+            )
+        )
+        first = last
+    columns = np.array(rings)
+    keep = columns[:, 0] > 0.0
+    return columns[keep, 0], columns[keep, 1], columns[keep, 2]
+
+
+def total_pressure_deficit(survey: Survey, fit: Fit, drop: Estimate, *, density: Estimate) -> Estimate | None:
+    """Total pressure far away less total pressure on the axis, Δp + ½ρ(W∞² - W0²); None without an axial velocity. [Pa]
+
+    W0 is the mean over the samples within half a peak radius (the nearest three where there are fewer), W∞ that beyond three
+    peak radii. The static drop itself does not depend on the axial velocity.
+    """
+    chosen = survey.axial
+    if not chosen.any() or not math.isfinite(drop.value):
+        return None
+    radius = np.hypot(survey.x[chosen] - fit.centre[0], survey.y[chosen] - fit.centre[1])
+    velocity = survey.velocity[chosen]
+    peak = fit.vortex.peak_radius
+    near = radius <= max(0.5 * peak, float(np.sort(radius)[min(2, len(radius) - 1)]))
+    far = radius >= 3.0 * peak
+    if not far.any():
+        far = radius >= np.quantile(radius, 0.8)
+    inner, outer = float(velocity[near].mean()), float(velocity[far].mean())
+    u_inner = float(velocity[near].std(ddof=1)) / math.sqrt(near.sum()) if near.sum() > 1 else 0.0
+    u_outer = float(velocity[far].std(ddof=1)) / math.sqrt(far.sum()) if far.sum() > 1 else 0.0
+    change = 0.5 * density.value * (outer**2 - inner**2)
+    u_change = density.value * math.hypot(outer * u_outer, inner * u_inner)
+    budget = (Contribution("static core pressure drop", drop.uncertainty), Contribution("axial velocity", u_change))
+    return Estimate(drop.value + change, math.hypot(drop.uncertainty, u_change), "pressure_drop", budget=budget)

@@ -1,0 +1,535 @@
+"""appraise: from a survey to a defended core pressure, once."""
+
+from __future__ import annotations
+
+import math
+import sys
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from datetime import UTC, datetime
+from functools import cached_property
+from importlib.metadata import version
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from vortexwidgets import record
+from vortexwidgets.consequences import assess_all
+from vortexwidgets.consequences.consequence import Consequence, Criterion
+from vortexwidgets.core_pressure import (
+    Core,
+    CoreDrop,
+    DataDrop,
+    circulation_at,
+    combined_drop,
+    core_pressure_of,
+    data_drop,
+    named_drops,
+    share_beyond,
+    total_pressure_deficit,
+)
+from vortexwidgets.fitting.fit import Settings, fit_survey, settings_for
+from vortexwidgets.fitting.ranking import Ranking, rank_models
+from vortexwidgets.fitting.result import FitError, Loss, Uncertainties
+from vortexwidgets.fluids import Fluid, Site, fluid_named
+from vortexwidgets.formatting import format_estimate, format_number, table
+from vortexwidgets.models.agreement import Agreement, AgreementRow, check_agreement
+from vortexwidgets.models.vortex import Vortex
+from vortexwidgets.survey.instrument import Instrument
+from vortexwidgets.survey.samples import DroppedRow, Provenance
+from vortexwidgets.survey.screening import Screening, screen
+from vortexwidgets.survey.survey import Survey
+from vortexwidgets.uncertainty import Contribution, Estimate
+
+if TYPE_CHECKING:
+    from vortexwidgets.fitting.problem import Background
+    from vortexwidgets.models.model import VortexModel
+
+_CAUTION_BEYOND, _UNDETERMINED_BEYOND = 0.10, 0.30  # shares of the drop that no station saw
+_COMPRESSIBLE = 0.02  # of the ambient pressure
+_ASSUMED_TEMPERATURE = (15.0, 5.0)  # °C, where a fluid is named without one; its doubt is carried
+
+NO_MODEL_FITS = "No model fits: the data reject every profile that was tried."
+
+
+@dataclass(frozen=True)
+class ModelRow:
+    """What the record keeps of one ranked profile."""
+
+    key: str
+    names: tuple[str, ...]
+    aicc: float
+    weight: float
+    p_value: float
+    rejected: bool
+    reason: str
+    status: str
+    chi_square: float
+    degrees_of_freedom: int
+    parameters: Mapping[str, Estimate]
+    drop: Estimate
+    pressure_constant: float
+
+
+@dataclass(frozen=True, eq=False)
+class Appraisal:
+    """Everything that was concluded from one survey; frozen, equal by content, kept by `save`.
+
+    Attributes
+    ----------
+    survey, fluid, site, instrument, settings
+        What went in. The survey has its outliers set aside.
+    screening : Screening
+        Whether the survey is good enough.
+    models : tuple of ModelRow
+        Distinct profiles, best first, with parameters, limits and drop of each.
+    core_pressure_drop : Estimate
+        Of the instantaneous vortex: weighted over the models that are not rejected. [Pa]
+    core_pressure : Estimate or None
+        Absolute pressure on the axis; None without a reference pressure. [Pa]
+    core_drops : tuple of CoreDrop
+        The three named drops.
+    envelope : tuple of float
+        Lowest and highest drop over the models that are not rejected. [Pa]
+    pressure_constant : float
+        K in drop = K ρ v_peak².
+    share_beyond : float
+        Share of the drop from beyond the last station.
+    consequences : tuple of Consequence
+        What follows, each with criterion, verdict, source and caution.
+    """
+
+    survey: Survey
+    fluid: Fluid
+    site: Site
+    instrument: Instrument | None
+    settings: Settings
+    model_keys: tuple[str, ...] | None
+    screening: Screening
+    models: tuple[ModelRow, ...]
+    criterion: str
+    core: Core
+    core_pressure_drop: Estimate
+    core_pressure: Estimate | None
+    core_drops: tuple[CoreDrop, ...]
+    envelope: tuple[float, float]
+    pressure_constant: float
+    edge_circulation: Estimate
+    share_beyond: float
+    reference: str
+    data_drop: DataDrop
+    total_pressure_deficit: Estimate | None
+    consequences: tuple[Consequence, ...]
+    agreements: tuple[Agreement, ...]
+    assumptions: tuple[str, ...]
+    cautions: tuple[str, ...]
+    versions: Mapping[str, str]
+    created: str
+    _ranking: Ranking | None = field(default=None, repr=False)
+
+    @cached_property
+    def ranking(self) -> Ranking:
+        """The live ranking with its fits; computed again from the survey where the appraisal was loaded."""
+        if self._ranking is not None:
+            return self._ranking
+        return _rank(self.survey, self.model_keys, self.settings)
+
+    @property
+    def answer(self) -> str:
+        """The answer in one line: drop = K ρ v_peak², ± u, envelope, share beyond the survey, reference."""
+        drop = self.core_pressure_drop
+        if math.isnan(drop.value):
+            return f"{NO_MODEL_FITS} No core pressure drop is given; see the residuals."
+        parts = [f"Core pressure drop {format_estimate(drop)}"]
+        if drop.bound is None or math.isfinite(drop.uncertainty):
+            parts[0] += f" (k = 1) = {self.pressure_constant:.3g} ρ v_peak²"
+        low, high = self.envelope
+        if math.isfinite(high):
+            number = sum(not row.rejected for row in self.models)
+            which = "the only model not rejected" if number == 1 else f"{number} models not rejected"
+            parts.append(f"{format_number(low, 'Pa')} to {format_number(high, 'Pa')} over {which}")
+        parts.append(f"{100 * self.share_beyond:.1f} % from beyond the survey")
+        parts.append(self.reference)
+        return "; ".join(parts) + "."
+
+    def summary(self) -> str:
+        """The appraisal as text for a terminal."""
+        lines = [self.answer, ""]
+        body = [
+            [
+                " = ".join(row.names),
+                f"{row.aicc:.1f}",
+                f"{100 * row.weight:.1f} %",
+                "rejected" if row.rejected else "not rejected",
+                str(row.parameters["core_radius"]) if "core_radius" in row.parameters else "",
+                str(row.drop),
+            ]
+            for row in self.models
+        ]
+        lines.append(table(body, ["model", "AICc above best", "weight", "by the data", "core radius", "core pressure drop"]))
+        lines += ["", "Core pressure: " + self._pressure_line()]
+        lines += [f"  {drop.name}: {drop.estimate}" for drop in self.core_drops]
+        lines += ["", "Consequences:"]
+        for item in self.consequences:
+            chance = "" if item.probability is None else f" (probability {item.probability:.2g})"
+            lines.append(f"  {item.name}: {item.estimate}; {item.criterion.text} {item.verdict}{chance}.")
+            lines.append(f"    {item.caution}")
+        for title, sentences in (("Assumed", self.assumptions), ("Cautions", self.cautions)):
+            if sentences:
+                lines += ["", f"{title}:", *(f"  - {sentence}" for sentence in sentences)]
+        return "\n".join(lines)
+
+    def _pressure_line(self) -> str:
+        if self.core_pressure is None:
+            return "not given, because no reference pressure was; give ambient_pressure, or surface_pressure and depth."
+        return f"{self.core_pressure} absolute."
+
+    def __str__(self) -> str:
+        return self.summary()
+
+    def __eq__(self, other: object) -> bool:
+        return isinstance(other, Appraisal) and record.encode(self) == record.encode(other)
+
+    def __hash__(self) -> int:
+        return hash((self.answer, self.created))
+
+    def to_json(self) -> str:
+        """The appraisal as JSON text that `from_json` turns back into an equal one."""
+        return record.to_json(self)
+
+    @staticmethod
+    def from_json(text: str) -> Appraisal:
+        """An appraisal from its JSON text; nothing in it is executed."""
+        return _checked(record.from_json(text, REGISTRY))
+
+    def save(self, path: str | Path) -> Path:
+        """Write the record: .html for people, .json for machines; an interrupted write leaves nothing half-done."""
+        target = Path(path)
+        if target.suffix == ".html":
+            record.save_html(self, target)
+        elif target.suffix == ".json":
+            record.save_json(self, target)
+        else:
+            raise ValueError(f"A record ends in .html or .json, got {target.name!r}.")
+        return target
+
+
+def load_appraisal(path: str | Path) -> Appraisal:
+    """Load an appraisal from a JSON record."""
+    return _checked(record.load_json(path, REGISTRY))
+
+
+def _checked(value: Any) -> Appraisal:
+    if not isinstance(value, Appraisal):
+        raise ValueError(f"The record holds a {type(value).__name__}, not an appraisal; save one with appraisal.save('record.json').")
+    return value
+
+
+# Every class that a JSON record may name. What is not here is refused.
+REGISTRY: Mapping[str, type] = {
+    cls.__name__: cls
+    for cls in (
+        Agreement, AgreementRow, Appraisal, Consequence, Contribution, Core, CoreDrop, Criterion, DataDrop, DroppedRow,
+        Estimate, Fluid, Instrument, ModelRow, Provenance, Screening, Settings, Site, Survey, Vortex,
+    )
+}  # fmt: skip
+
+
+def appraise(
+    survey: Survey,
+    *,
+    fluid: Fluid | None = None,
+    site: Site | None = None,
+    instrument: Instrument | None = None,
+    models: Sequence[str | VortexModel] | None = None,
+    background: Background | None = None,
+    uncertainties: Uncertainties | None = None,
+    loss: Loss = "linear",
+) -> Appraisal:
+    """Take a survey to the core pressure and what follows from it.
+
+    Parameters
+    ----------
+    survey : Survey
+        Outliers are set aside by `screen` and listed.
+    fluid, site, instrument : optional
+        What the survey's own facts do not say, or say wrongly. A fluid that nobody named is taken as water at
+        15 ± 5 °C, and the answer says so.
+    models : sequence, optional
+        Models to rank; all ranked ones of the catalogue by default.
+    background, uncertainties, loss : optional
+        As for `fit_survey`.
+
+    Returns
+    -------
+    Appraisal
+        Printable, savable; `.answer` is one line.
+
+    Raises
+    ------
+    FitError
+        If no vortex is seen or no model can be fitted.
+    ValueError
+        If facts contradict each other or lie outside a fluid's range.
+    """
+    assumptions: list[str] = []
+    fluid = fluid if fluid is not None else _fluid_of(survey, assumptions)
+    site = site if site is not None else _site_of(survey)
+    instrument = instrument if instrument is not None else _instrument_of(survey)
+    screened = screen(survey).survey
+    settings = settings_for(
+        screened, instrument=instrument, background=background, uncertainties=uncertainties, loss=loss
+    )
+    keys = None if models is None else tuple(m if isinstance(m, str) else m.key for m in models)
+    ranking = _rank(screened, models, settings)
+    supported = ranking.supported
+    best = supported[0] if supported else ranking.best
+    vortex = best.fit.vortex
+    screening = screen(survey, centre=best.fit.centre, peak_radius=vortex.peak_radius)
+    missed = survey.geometry == "traverse" and not survey.two_components and survey.miss_distance is None
+    cautions = _survey_cautions(screened, ranking, missed=missed)
+
+    last_radius = float(best.fit.radius.max())
+    beyond = share_beyond(vortex, last_radius)
+    ambient = site.axis_pressure(fluid)
+    limit = site.reference_radius
+    reference = _reference_sentence(ambient, limit)
+    if limit is None and beyond > _UNDETERMINED_BEYOND:
+        limit = last_radius
+        reference = f"relative to the pressure at the last station, {format_number(last_radius, 'm')} from the axis"
+        cautions.append(
+            f"{100 * beyond:.0f} % of the drop would come from beyond the survey, so the drop is given relative to the last "
+            "station; measure farther out for the drop from the far field."
+        )
+    elif beyond > _CAUTION_BEYOND:
+        cautions.append(
+            f"{100 * beyond:.0f} % of the drop comes from beyond the last station, where only the model speaks; measure farther out."
+        )
+    if not supported:
+        drop, envelope = Estimate(math.nan, math.nan, "core_pressure_drop"), (math.nan, math.nan)
+        cautions.insert(0, f"{NO_MODEL_FITS} The closest is {best.model.name}: {best.reason} The residuals are shown.")
+    else:
+        drop, envelope = combined_drop(supported, density=fluid.density, gain=survey.velocity_gain, beyond=limit)
+    if missed and drop.bound is None:
+        drop = Estimate(drop.value, drop.uncertainty, drop.quantity, budget=drop.budget, quantiles=drop.quantiles, bound="lower")
+    from_station = site.reference_radius is None and limit is not None
+    gas = fluid.heat_capacity_ratio
+    pressure = None
+    if ambient is not None and not from_station and not math.isnan(drop.value):
+        pressure = core_pressure_of(drop, ambient, heat_capacity_ratio=gas)
+    if gas is not None and ambient is not None and drop.value > _COMPRESSIBLE * ambient.value:
+        cautions.append(
+            f"The drop is {100 * drop.value / ambient.value:.1f} % of the ambient pressure: the gas expands, and the core pressure "
+            "is taken through the isentropic relation instead of the constant-density drop."
+        )
+    peak_swirl = best.fit.estimate("peak_swirl")
+    constant = drop.value / (fluid.density.value * vortex.peak_swirl**2)
+    drops = named_drops(drop, vortex, wander=instrument.wander if instrument else 0.0) if supported else ()
+    core = Core(
+        vortex=vortex,
+        supported=tuple(row.fit.vortex for row in supported),
+        drop=drop,
+        tap_drop=drops[1].estimate if drops else drop,
+        ambient=None if from_station else ambient,
+        pressure=pressure,
+        envelope=envelope,
+        circulation=_with_common(best.fit.estimate("circulation"), survey) if "circulation" in best.fit.names
+        else circulation_at(best.fit, last_radius),
+        core_radius=best.fit.estimate("core_radius"),
+        peak_swirl=_with_common(peak_swirl, survey),
+        peak_radius=best.fit.estimate("peak_radius"),
+        density=fluid.density,
+        missed_axis=missed,
+    )  # fmt: skip
+    return Appraisal(
+        survey=screened,
+        fluid=fluid,
+        site=site,
+        instrument=instrument,
+        settings=settings,
+        model_keys=keys,
+        screening=screening,
+        models=_model_rows(ranking, fluid),
+        criterion=ranking.criterion,
+        core=core,
+        core_pressure_drop=drop,
+        core_pressure=pressure,
+        core_drops=drops,
+        envelope=envelope,
+        pressure_constant=constant,
+        edge_circulation=circulation_at(best.fit, last_radius),
+        share_beyond=beyond,
+        reference=reference,
+        data_drop=data_drop(screened, best.fit, density=fluid.density, model_drop=drop),
+        total_pressure_deficit=total_pressure_deficit(screened, best.fit, drop, density=fluid.density),
+        consequences=assess_all(core, fluid, site) if supported else (),
+        agreements=tuple(check_agreement(row.model.key) for row in (supported or (best,))[:3]),
+        assumptions=tuple(assumptions + _assumptions(survey, settings, instrument)),
+        cautions=tuple(cautions),
+        versions=_versions(),
+        created=datetime.now(UTC).isoformat(timespec="seconds"),
+        _ranking=ranking,
+    )
+
+
+def _rank(survey: Survey, models: Sequence[str | VortexModel] | None, settings: Settings) -> Ranking:
+    return rank_models(
+        survey,
+        models,
+        instrument=settings.instrument,
+        background=settings.background,
+        uncertainties=settings.uncertainties,
+        loss=settings.loss,
+    )
+
+
+# What the survey's own facts say ------------------------------------------------------------------------------------
+
+
+def _fluid_of(survey: Survey, assumptions: list[str]) -> Fluid:
+    facts = survey.facts
+    name = facts.get("fluid")
+    temperature = facts.get("temperature")
+    options: dict[str, Any] = {}
+    if isinstance(temperature, Estimate):
+        options["temperature"] = (temperature.value - 273.15, temperature.uncertainty)
+    elif isinstance(temperature, (int, float)):
+        options["temperature"] = float(temperature) - 273.15
+    else:
+        options["temperature"] = _ASSUMED_TEMPERATURE
+    if name is None:
+        name = "water"
+        assumptions.append("The fluid was not stated: water is taken. Pressures scale with density; give the fluid.")
+    if temperature is None:
+        assumptions.append(f"The temperature was not stated: 15 ± 5 °C is taken for the {name}, with its doubt carried.")
+    pressure = facts.get("ambient_pressure", facts.get("surface_pressure"))
+    if pressure is not None:
+        options["pressure"] = pressure
+    if "salinity" in facts:
+        options["salinity"] = facts["salinity"]
+    return fluid_named(str(name), **options)
+
+
+def _site_of(survey: Survey) -> Site:
+    facts = survey.facts
+    names = ("ambient_pressure", "surface_pressure", "depth", "gravity", "orientation", "reference_radius", "translation_speed",
+             "tensile_strength", "gas_saturation", "inception", "elevation", "submergence")  # fmt: skip
+    known: dict[str, Any] = {name: facts[name] for name in names if name in facts}
+    if "free_stream" in facts:
+        known["speed"] = facts["free_stream"]
+    for name in ("reference_radius", "gravity", "gas_saturation"):
+        if isinstance(known.get(name), Estimate):
+            known[name] = known[name].value
+    return Site(**known)
+
+
+def _instrument_of(survey: Survey) -> Instrument | None:
+    facts = survey.facts
+    known: dict[str, Any] = {}
+    for name in ("wander", "probe_width"):
+        value = facts.get(name)
+        if value is not None:
+            known[name] = value.value if isinstance(value, Estimate) else float(value)
+    if "averaging" in facts:
+        known["averaging"] = str(facts["averaging"])
+    return Instrument(**known) if known else None
+
+
+# Sentences ----------------------------------------------------------------------------------------------------------
+
+
+def _reference_sentence(ambient: Estimate | None, radius: float | None) -> str:
+    if radius is not None:
+        return f"relative to the pressure at {format_number(radius, 'm')} from the axis"
+    if ambient is None:
+        return "relative to the far field, whose pressure was not given"
+    return f"relative to p∞ = {format_estimate(ambient)} absolute at the elevation of the axis"
+
+
+def _survey_cautions(survey: Survey, ranking: Ranking, *, missed: bool) -> list[str]:
+    cautions = []
+    best = ranking.best
+    if missed:
+        cautions.append(
+            "One component was measured and no miss distance stated, so the line may have missed the axis: the drop is a lower "
+            "bound. Measure the component along the line, or state the miss distance."
+        )
+    for text in dict.fromkeys(best.fit._open.values()):
+        cautions.append(text)
+    if survey.geometry == "traverse" and best.fit.background == "none":
+        try:
+            wider = fit_survey(survey, best.model, background="uniform", uncertainties=best.fit.uncertainties, on_failure="return")
+        except (ValueError, FitError):
+            wider = None
+        unit = best.fit.scatter**2 if best.fit.uncertainties == "relative" else 1.0
+        if wider is not None and wider.converged and best.fit.chi_square - wider.chi_square > 10.0 * unit:
+            cautions.append(
+                "A uniform background flow would fit markedly better "
+                f"(chi² falls by {(best.fit.chi_square - wider.chi_square) / unit:.0f}); consider background='uniform'."
+            )
+    cautions.append(
+        "An intrusive probe can move or burst a core, seeding can leave it empty, a hot wire reads speed and not a component, "
+        "and tunnel walls have images (common practice)."
+    )
+    return cautions
+
+
+def _assumptions(survey: Survey, settings: Settings, instrument: Instrument | None) -> list[str]:
+    sentences = ["The vortex is axisymmetric and in radial equilibrium, dp/dr = ρ v²/r."]
+    if instrument is None or instrument.wander == 0.0:
+        sentences.append("The vortex did not wander while it was measured; fluctuation is not included.")
+    else:
+        sentences.append(f"The vortex wandered with a standard deviation of {format_number(instrument.wander, 'm')} along each axis.")
+    if instrument is None or instrument.probe_width == 0.0:
+        sentences.append("The probe is small beside the core.")
+    else:
+        sentences.append(f"The probe averages over {format_number(instrument.probe_width, 'm')} ({instrument.averaging}).")
+    background = {"none": "No background flow is fitted.", "uniform": "A uniform background flow is fitted.",
+                  "linear": "A background flow with a constant gradient is fitted."}  # fmt: skip
+    sentences.append(background[settings.background])
+    if settings.uncertainties == "absolute":
+        sentences.append("The stated uncertainties are standard ones, independent from sample to sample.")
+    else:
+        sentences.append("The uncertainty of a sample is the scatter of the residuals.")
+    if survey.velocity_gain.uncertainty == 0.0:
+        sentences.append("The velocity gain is taken as exact; its uncertainty would enter the drop twice.")
+    return sentences
+
+
+def _model_rows(ranking: Ranking, fluid: Fluid) -> tuple[ModelRow, ...]:
+    rows = []
+    for row in ranking:
+        fit = row.fit
+        shape = [fit.value(parameter.name) for parameter in fit.model.shape]
+        drop = fit.core_pressure_drop(fluid.density.value)
+        rows.append(
+            ModelRow(
+                key=row.model.key,
+                names=row.names,
+                aicc=row.aicc,
+                weight=row.weight,
+                p_value=row.p_value,
+                rejected=row.rejected,
+                reason=row.reason,
+                status=fit.status,
+                chi_square=fit.chi_square,
+                degrees_of_freedom=fit.degrees_of_freedom,
+                parameters={**fit.parameters, "peak_radius": fit.estimate("peak_radius"), "peak_swirl": fit.estimate("peak_swirl")},
+                drop=drop,
+                pressure_constant=fit.model.pressure_constant(*shape) if all(map(math.isfinite, shape)) else math.nan,
+            )
+        )
+    return tuple(rows)
+
+
+def _with_common(estimate: Estimate, survey: Survey) -> Estimate:
+    """Add the velocity gain, which does not average out."""
+    common = survey.velocity_gain.uncertainty * abs(estimate.value)
+    if common == 0.0 or not math.isfinite(estimate.uncertainty):
+        return estimate
+    budget = (Contribution("scatter of the samples", estimate.uncertainty), Contribution("velocity gain", common))
+    return Estimate(estimate.value, math.hypot(estimate.uncertainty, common), estimate.quantity, budget=budget)
+
+
+def _versions() -> dict[str, str]:
+    names = ("vortexwidgets", "numpy", "scipy", "sympy", "matplotlib", "CoolProp")
+    return {"Python": sys.version.split()[0], **{name: version(name) for name in names}}

@@ -1,0 +1,289 @@
+"""fit_survey: one survey, one model."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING, Literal
+
+import numpy as np
+import numpy.typing as npt
+
+from vortexwidgets.fitting.problem import (
+    CENTRE_X,
+    CENTRE_Y,
+    CORE_RADIUS,
+    SHAPE,
+    Background,
+    Problem,
+    build_problem,
+)
+from vortexwidgets.fitting.result import Fit, FitError, Loss, Status, Uncertainties
+from vortexwidgets.fitting.separable import Solution, solve
+from vortexwidgets.fitting.starting import search
+
+if TYPE_CHECKING:
+    from vortexwidgets.models.model import VortexModel
+    from vortexwidgets.survey.instrument import Instrument
+    from vortexwidgets.survey.survey import Survey
+
+FloatArray = npt.NDArray[np.float64]
+
+_ROBUST_ROUNDS = 50
+
+
+@dataclass(frozen=True)
+class Settings:
+    """How a survey is fitted, the same for every model."""
+
+    instrument: Instrument | None
+    background: Background
+    uncertainties: Uncertainties
+    loss: Loss = "linear"
+
+
+def settings_for(
+    survey: Survey,
+    *,
+    instrument: Instrument | None = None,
+    background: Background | None = None,
+    uncertainties: Uncertainties | None = None,
+    loss: Loss = "linear",
+) -> Settings:
+    """Fill in what was not said: a uniform background for planar fields, stated uncertainties where there are any."""
+    if background is None:
+        background = "uniform" if survey.geometry == "plane" else "none"
+    if uncertainties is None:
+        uncertainties = "relative" if survey.uncertainty is None else "absolute"
+    if background not in ("none", "uniform", "linear"):
+        raise ValueError(f"background must be 'none', 'uniform' or 'linear', got {background!r}.")
+    if uncertainties not in ("absolute", "relative"):
+        raise ValueError(f"uncertainties must be 'absolute' or 'relative', got {uncertainties!r}.")
+    if uncertainties == "absolute" and survey.uncertainty is None:
+        raise ValueError(
+            "The survey states no uncertainty, so uncertainties='absolute' has nothing to use; "
+            "state an uncertainty or choose 'relative'."
+        )
+    if loss not in ("linear", "huber", "soft_l1"):
+        raise ValueError(f"loss must be 'linear', 'huber' or 'soft_l1', got {loss!r}.")
+    return Settings(instrument, background, uncertainties, loss)
+
+
+def fit_survey(
+    survey: Survey,
+    model: str | VortexModel,
+    *,
+    instrument: Instrument | None = None,
+    background: Background | None = None,
+    uncertainties: Uncertainties | None = None,
+    loss: Loss = "linear",
+    start: Mapping[str, float] | None = None,
+    fixed: Mapping[str, float] | None = None,
+    on_failure: Literal["raise", "return"] = "raise",
+) -> Fit:
+    """Fit one vortex model to one survey.
+
+    Parameters
+    ----------
+    survey : Survey
+        Included in-plane samples are used.
+    model : str or VortexModel
+        Key of the catalogue, or a model.
+    instrument : Instrument, optional
+        Wander and probe width, corrected for inside the fit.
+    background : {"none", "uniform", "linear"}, optional
+        Flow added to the vortex. Default: uniform for planar fields, none otherwise.
+    uncertainties : {"absolute", "relative"}, optional
+        "absolute" takes the stated uncertainties as they are; "relative" scales them (ones, where none are stated) so
+        that the residuals have the scatter they show. Default: absolute where the survey states uncertainties.
+    loss : {"linear", "huber", "soft_l1"}
+        The last two weigh outliers down; the covariance is then the sandwich estimate and limits are linear.
+    start : mapping, optional
+        centre_x, centre_y, core_radius, shape parameters to start from; found by a search where not given. [SI]
+    fixed : mapping, optional
+        Parameters held at a value. [SI]
+    on_failure : {"raise", "return"}
+        Whether a fit that finds no vortex or no minimum raises, or is handed back with its status.
+
+    Returns
+    -------
+    Fit
+        With `.status` as a sentence.
+
+    Raises
+    ------
+    FitError
+        If no vortex is seen, or the iteration stops short of the minimum.
+    ValueError
+        If the model cannot be fitted, a name is unknown, or there are fewer samples than parameters.
+
+    Examples
+    --------
+    NIST StRD Misra1a is the Lamb-Oseen circulation law in disguise; its certified values are in
+    ``tests/published/test_nist_misra1a.py``.
+    """
+    model = _model(model)
+    settings = settings_for(
+        survey, instrument=instrument, background=background, uncertainties=uncertainties, loss=loss
+    )
+    problem = problem_for(survey, model, settings)
+    free, held = free_parameters(survey, model, fixed)
+    starts = _starts(survey, problem, held, start or {})
+    return fit_problem(problem, settings, free, starts, on_failure=on_failure, held=held)
+
+
+def problem_for(survey: Survey, model: VortexModel, settings: Settings) -> Problem:
+    """Lay out a survey for a model under given settings."""
+    return build_problem(
+        survey,
+        model,
+        instrument=settings.instrument,
+        background=settings.background,
+        weighted=survey.uncertainty is not None,
+    )
+
+
+def free_parameters(
+    survey: Survey, model: VortexModel, fixed: Mapping[str, float] | None = None
+) -> tuple[tuple[int, ...], dict[int, float]]:
+    """Nonlinear parameters that may move, and those that are held with their values."""
+    held: dict[int, float] = {}
+    if survey.geometry == "radial":
+        held = {CENTRE_X: 0.0, CENTRE_Y: 0.0}
+    elif survey.geometry == "traverse" and not survey.two_components:
+        missed = survey.miss_distance
+        if missed is None or missed.uncertainty == 0.0:
+            held = {CENTRE_Y: 0.0 if missed is None else missed.value}
+    names = ["centre_x", "centre_y", "core_radius", *(parameter.name for parameter in model.shape)]
+    for name, value in (fixed or {}).items():
+        if name not in names:
+            raise ValueError(f"No parameter {name!r} to hold for {model.name}. Known: {', '.join(names)}.")
+        if names.index(name) >= CORE_RADIUS and not value > 0.0:
+            raise ValueError(f"fixed {name} must be positive, got {value}.")
+        held[names.index(name)] = float(value)
+    return tuple(index for index in range(len(names)) if index not in held), held
+
+
+def fit_problem(
+    problem: Problem,
+    settings: Settings,
+    free: tuple[int, ...],
+    starts: list[list[float]],
+    *,
+    on_failure: Literal["raise", "return"] = "raise",
+    held: Mapping[int, float] | None = None,
+) -> Fit:
+    """Fit from one or several starts and keep the lowest minimum."""
+    samples = len(problem.target) + (problem.prior is not None)
+    number = 1 + len(problem.background) + len(free)
+    if samples < number:
+        raise ValueError(
+            f"Survey has {samples} points but {problem.model.name} has {number} free parameters here; "
+            "add points, fix a parameter or choose a smaller background."
+        )
+    solutions = [solve(problem, start, free) for start in starts]
+    solution = solutions[0] if len(solutions) == 1 else min(solutions, key=lambda s: (not s.converged, s.chi_square))
+    if settings.loss != "linear":
+        problem, solution = _robust(problem, settings, solution)
+    fit = Fit(
+        model=problem.model,
+        names=_names(problem, free),
+        chi_square=solution.chi_square,
+        degrees_of_freedom=samples - number,
+        uncertainties=settings.uncertainties,
+        background=settings.background,
+        loss=settings.loss,
+        evaluations=solution.steps,
+        remarks=(),
+        _problem=problem,
+        _solution=solution,
+    )
+    if on_failure == "raise":
+        _refuse_failure(fit)
+    return fit
+
+
+def starts_for(problem: Problem, found: list[list[float]], held: Mapping[int, float]) -> list[list[float]]:
+    """Turn (centre_x, centre_y, peak_radius) of the search into starts of a model."""
+    default = [parameter.default for parameter in problem.model.shape]
+    at, _ = problem.model.peak_of(*default)
+    starts = []
+    for centre_x, centre_y, peak_radius in found:
+        start = [centre_x, centre_y, peak_radius / at, *default]
+        for index, value in held.items():
+            start[index] = value
+        starts.append(start)
+    return starts
+
+
+def _refuse_failure(fit: Fit) -> None:
+    if not fit.converged:
+        raise FitError(
+            f"{Status.STOPPED.value} What it had: {', '.join(f'{n} = {v:.4g}' for n, v in zip(fit.names, fit._best, strict=True))}."
+            " Give a start, fix a parameter, or choose another model.",
+            fit,
+        )
+    # Only a weak drop of chi-square is worth the question whether there is a vortex at all.
+    if float(fit._problem.target @ fit._problem.target) < 10.0 * fit.chi_square + 1e3 and not fit._is_seen:
+        raise FitError(Status.NO_VORTEX.value + " Check the sign, the units and the centre, or measure closer.", fit)
+
+
+def _names(problem: Problem, free: tuple[int, ...]) -> tuple[str, ...]:
+    labels = ("centre_x", "centre_y", "core_radius", *(parameter.name for parameter in problem.model.shape))
+    return (problem.strength_name, *problem.background_names, *(labels[index] for index in free))
+
+
+def _starts(
+    survey: Survey, problem: Problem, held: Mapping[int, float], given: Mapping[str, float]
+) -> list[list[float]]:
+    names = ["centre_x", "centre_y", "core_radius", *(parameter.name for parameter in problem.model.shape)]
+    linear = (problem.strength_name, *problem.background_names)
+    unknown = [name for name in given if name not in names and name not in linear]
+    if unknown:
+        raise ValueError(f"No parameter {unknown[0]!r} to start from. Known: {', '.join(names)}.")
+    wanted = {names.index(name): float(value) for name, value in given.items() if name in names}
+    if all(index in wanted or index in held or index >= SHAPE for index in range(SHAPE)):
+        start = [wanted.get(index, held.get(index, math.nan)) for index in range(SHAPE)]
+        start += [
+            wanted.get(index, held.get(index, parameter.default))
+            for index, parameter in enumerate(problem.model.shape, SHAPE)
+        ]
+        return [start]
+    known = {**held, **wanted}
+    found = search(problem, centre=(known.get(CENTRE_X), known.get(CENTRE_Y)), several=2)
+    return starts_for(problem, found, known)
+
+
+def _robust(problem: Problem, settings: Settings, solution: Solution) -> tuple[Problem, Solution]:
+    """Iteratively reweighted least squares; the scale is one standard uncertainty, or the scatter's robust estimate."""
+    original = problem
+    for _ in range(_ROBUST_ROUNDS):
+        response, _derivatives = original.columns(solution.nonlinear, ())
+        residual = original.target - solution.strength * response
+        if len(original.background):
+            residual = residual - solution.linear[1:] @ original.background
+        scale = 1.0
+        if settings.uncertainties == "relative":
+            scale = 1.4826 * float(np.median(np.abs(residual))) or 1.0
+        z = np.abs(residual) / scale
+        weight = np.minimum(1.0, 1.345 / np.maximum(z, 1e-300)) if settings.loss == "huber" else 1.0 / np.sqrt(1.0 + z * z)
+        problem = original.reweighted(np.sqrt(weight))
+        before = solution
+        solution = solve(problem, before.nonlinear, before.free)
+        move = np.abs(np.subtract(solution.nonlinear, before.nonlinear)) / solution.nonlinear[CORE_RADIUS]
+        if float(move.max()) < 1e-8:
+            break
+    return problem, replace(solution, residuals=solution.residuals)
+
+
+def _model(model: str | VortexModel) -> VortexModel:
+    from vortexwidgets.models.catalogue import model_named
+
+    chosen = model_named(model) if isinstance(model, str) else model
+    if not chosen.ranked:
+        raise ValueError(
+            f"{chosen.name} cannot be fitted: it has no core radius or no pressure on the axis. "
+            "Choose a model with a core, such as 'lamb-oseen'."
+        )
+    return chosen

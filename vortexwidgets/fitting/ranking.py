@@ -1,0 +1,293 @@
+"""How strongly the survey supports each distinct profile, and which it does not reject."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from vortexwidgets.fitting.fit import Settings, fit_problem, free_parameters, problem_for, settings_for, starts_for
+from vortexwidgets.fitting.result import Fit, FitError, Loss, Status, Uncertainties
+from vortexwidgets.fitting.starting import search
+from vortexwidgets.formatting import table
+
+if TYPE_CHECKING:
+    from vortexwidgets.fitting.problem import Background
+    from vortexwidgets.models.model import VortexModel
+    from vortexwidgets.survey.instrument import Instrument
+    from vortexwidgets.survey.survey import Survey
+
+REJECTION = 0.01  # a profile whose chi-square would be exceeded by chance less often than this is rejected
+
+
+@dataclass(frozen=True, eq=False)
+class Ranked:
+    """One distinct profile in the ranking.
+
+    Attributes
+    ----------
+    model : VortexModel
+        The profile.
+    names : tuple of str
+        Every published name that the profile goes by.
+    fit : Fit
+        Its fit.
+    aicc : float
+        Corrected Akaike criterion, less that of the best.
+    weight : float
+        Akaike weight among the profiles that are ranked.
+    p_value : float
+        Chance of a chi-square as large as this one if the profile were right.
+    rejected : bool
+        Whether the data reject it.
+    reason : str
+        The sentence behind `rejected`.
+    """
+
+    model: VortexModel
+    names: tuple[str, ...]
+    fit: Fit
+    aicc: float
+    weight: float
+    p_value: float
+    rejected: bool
+    reason: str
+
+
+@dataclass(frozen=True, eq=False)
+class Ranking:
+    """Distinct profiles, best first."""
+
+    rows: tuple[Ranked, ...]
+    criterion: str
+    failures: tuple[str, ...] = ()
+
+    def __iter__(self) -> Iterator[Ranked]:
+        return iter(self.rows)
+
+    def __len__(self) -> int:
+        return len(self.rows)
+
+    def __getitem__(self, which: int | str) -> Ranked:
+        if isinstance(which, int):
+            return self.rows[which]
+        for row in self.rows:
+            if which == row.model.key or which in row.names:
+                return row
+        raise KeyError(f"No model {which!r} in the ranking. Ranked: {', '.join(row.model.key for row in self.rows)}.")
+
+    @property
+    def best(self) -> Ranked:
+        """The profile with the lowest criterion."""
+        return self.rows[0]
+
+    @property
+    def supported(self) -> tuple[Ranked, ...]:
+        """The profiles that the data do not reject."""
+        return tuple(row for row in self.rows if not row.rejected)
+
+    def __str__(self) -> str:
+        body = [
+            [
+                " = ".join(row.names),
+                f"{row.aicc:.1f}",
+                f"{100 * row.weight:.1f} %",
+                f"{row.p_value:.2g}",
+                "rejected" if row.rejected else "not rejected",
+            ]
+            for row in self.rows
+        ]
+        return table(body, ["model", "AICc above best", "weight", "p", "by the data"]) + "\n" + self.criterion
+
+
+def rank_models(
+    survey: Survey,
+    models: Sequence[str | VortexModel] | None = None,
+    *,
+    instrument: Instrument | None = None,
+    background: Background | None = None,
+    uncertainties: Uncertainties | None = None,
+    loss: Loss = "linear",
+    fixed: Mapping[str, float] | None = None,
+) -> Ranking:
+    """Fit the distinct published profiles side by side and rank them.
+
+    Parameters
+    ----------
+    survey : Survey
+        Included in-plane samples are used.
+    models : sequence of str or VortexModel, optional
+        Which to rank; all ranked models of the catalogue by default. Models with one and the same swirl profile are
+        ranked once, under all their names.
+    instrument, background, uncertainties, loss, fixed
+        As for `fit_survey`.
+
+    Returns
+    -------
+    Ranking
+        Best first.
+
+    Raises
+    ------
+    FitError
+        If no model can be fitted, or no vortex is seen.
+
+    Notes
+    -----
+    With stated uncertainties AICc = chi² + 2k + 2k(k+1)/(N-k-1), and a profile is rejected when its chi-square has a
+    chance below 0.01. With unknown scatter AICc = N ln(RSS/N) + 2(k+1) + 2(k+1)(k+2)/(N-k-2), and the test is relative: a
+    profile is rejected when its sum of squares is larger than the smallest one by more than the F distribution allows at
+    0.01; or, where positions were repeated, when the lack of fit exceeds the scatter of the repeats.
+
+    References
+    ----------
+    .. [1] C. M. Hurvich and C.-L. Tsai, Biometrika 76 (1989) 297-307.
+    .. [2] K. P. Burnham and D. R. Anderson, Model Selection and Multimodel Inference, 2nd ed., Springer, 2002, ch. 2.
+    """
+    settings = settings_for(
+        survey, instrument=instrument, background=background, uncertainties=uncertainties, loss=loss
+    )
+    profiles = distinct_profiles(models)
+    fits, failures = _fits(survey, [model for model, _ in profiles], settings, fixed or {})
+    kept = [(model, names, fit) for (model, names), fit in zip(profiles, fits, strict=True) if fit is not None]
+    if not kept:
+        raise FitError("No model could be fitted. " + " ".join(failures))
+    if not any(fit._is_seen for _, _, fit in kept):
+        raise FitError(Status.NO_VORTEX.value + " Check the sign, the units and the centre, or measure closer.", kept[0][2])
+    known = settings.uncertainties == "absolute"
+    criteria = np.array([_aicc(fit, known=known) for _, _, fit in kept])
+    criteria -= criteria.min()
+    weights = np.exp(-0.5 * criteria)
+    weights /= weights.sum()
+    tests = _absolute_tests([fit for _, _, fit in kept]) if known else _relative_tests(survey, [f for _, _, f in kept])
+    rows = [
+        Ranked(model, names, fit, float(aicc), float(weight), p, p < REJECTION, reason)
+        for (model, names, fit), aicc, weight, (p, reason) in zip(kept, criteria, weights, tests, strict=True)
+    ]
+    rows.sort(key=lambda row: row.aicc)
+    return Ranking(tuple(rows), _criterion(known=known), tuple(failures))
+
+
+def distinct_profiles(models: Sequence[str | VortexModel] | None = None) -> list[tuple[VortexModel, tuple[str, ...]]]:
+    """Models to rank, each with every name of its profile."""
+    from vortexwidgets.models.catalogue import MODELS, model_named
+
+    if models is None:
+        chosen = [model for model in MODELS.values() if model.ranked]
+    else:
+        chosen = [model_named(model) if isinstance(model, str) else model for model in models]
+        for model in chosen:
+            if not model.ranked:
+                raise ValueError(
+                    f"{model.name} cannot be ranked: it has no core radius or no finite pressure on the axis. Leave it out."
+                )
+    if not chosen:
+        raise ValueError("No model to rank; name at least one, such as 'lamb-oseen'.")
+    groups: dict[str, list[VortexModel]] = {}
+    for model in chosen:
+        groups.setdefault(model.same_profile_as or model.key, []).append(model)
+    return [(group[0], tuple(model.name for model in group)) for group in groups.values()]
+
+
+def _fits(
+    survey: Survey, models: Sequence[VortexModel], settings: Settings, fixed: Mapping[str, float]
+) -> tuple[list[Fit | None], list[str]]:
+    """One fit per model, all from one search."""
+    first = problem_for(survey, models[0], settings)
+    _, held = free_parameters(survey, models[0], {})
+    known = {**held, **{i: fixed[n] for i, n in enumerate(("centre_x", "centre_y")) if n in fixed}}
+    found = search(first, centre=(known.get(0), known.get(1)), several=2)
+    fits: list[Fit | None] = []
+    failures: list[str] = []
+    for model in models:
+        names = ("centre_x", "centre_y", "core_radius", *(parameter.name for parameter in model.shape))
+        free, held = free_parameters(survey, model, {n: v for n, v in fixed.items() if n in names})
+        problem = first.for_model(model)
+        try:
+            fit = fit_problem(problem, settings, free, starts_for(problem, found, held), on_failure="return")
+        except ValueError as error:
+            fits.append(None)
+            failures.append(f"{model.name}: {error}")
+            continue
+        if not fit.converged:
+            failures.append(f"{model.name}: {Status.STOPPED.value}")
+        fits.append(fit if fit.converged else None)
+    return fits, failures
+
+
+def _aicc(fit: Fit, *, known: bool) -> float:
+    samples = fit.degrees_of_freedom + len(fit.names)
+    k = len(fit.names)
+    if known:
+        value = fit.chi_square + 2.0 * k
+    else:
+        value = samples * math.log(max(fit.chi_square, 1e-300) / samples)
+        k += 1
+        value += 2.0 * k
+    room = samples - k - 1
+    return value + 2.0 * k * (k + 1) / room if room > 0 else math.inf
+
+
+def _criterion(*, known: bool) -> str:
+    if known:
+        return (
+            "AICc with the stated uncertainties (chi² + 2k + 2k(k+1)/(N-k-1)); "
+            f"a model is rejected where its chi² has a chance below {REJECTION}."
+        )
+    return (
+        "AICc with the scatter estimated from the residuals (N ln(RSS/N) + ...); "
+        f"a model is rejected where its residuals exceed those of the best model, or of repeats, at a chance below {REJECTION}."
+    )
+
+
+def _absolute_tests(fits: Sequence[Fit]) -> list[tuple[float, str]]:
+    from scipy.special import chdtrc
+
+    tests = []
+    for fit in fits:
+        p = float(chdtrc(max(fit.degrees_of_freedom, 1), fit.chi_square))
+        tests.append((p, f"chi² is {fit.chi_square:.1f} on {fit.degrees_of_freedom} degrees of freedom (p = {p:.2g})."))
+    return tests
+
+
+def _relative_tests(survey: Survey, fits: Sequence[Fit]) -> list[tuple[float, str]]:
+    """Lack of fit against repeats where there are enough of them, else against the smallest residuals."""
+    from scipy.special import fdtrc
+
+    pure, freedom = _repeats(survey, fits[0])
+    tests = []
+    if freedom >= 5:
+        for fit in fits:
+            extra = fit.degrees_of_freedom - freedom
+            lack = max(fit.chi_square - pure, 0.0)
+            ratio = (lack / max(extra, 1)) / (pure / freedom)
+            p = float(fdtrc(max(extra, 1), freedom, ratio))
+            tests.append((p, f"lack of fit is {ratio:.2f} times the scatter of the repeats (p = {p:.2g})."))
+        return tests
+    best = min(fits, key=lambda fit: fit.scatter)
+    unit = best.scatter**2
+    for fit in fits:
+        rise = max(fit.chi_square - best.chi_square, 0.0)
+        ratio = rise / unit if unit > 0.0 else (math.inf if rise > 0.0 else 0.0)
+        p = float(fdtrc(1, max(best.degrees_of_freedom, 1), ratio)) if math.isfinite(ratio) else 0.0
+        if fit is best:
+            reason = "smallest residuals; their scatter is taken as the noise, so this model cannot be rejected."
+        else:
+            reason = f"the sum of squares is {ratio:.1f} noise variances above the smallest (p = {p:.2g})."
+        tests.append((p, reason))
+    return tests
+
+
+def _repeats(survey: Survey, fit: Fit) -> tuple[float, int]:
+    """Sum of squares about the means of repeated samples, and its degrees of freedom."""
+    chosen = survey.in_plane
+    keys = np.column_stack([survey.x[chosen], survey.y[chosen], survey.direction[chosen]])
+    _, group = np.unique(keys, axis=0, return_inverse=True)
+    group = np.ravel(group)
+    count = np.bincount(group)
+    target = fit._problem.target
+    mean = np.bincount(group, weights=target) / count
+    return float(np.sum((target - mean[group]) ** 2)), int(np.sum(count - 1))

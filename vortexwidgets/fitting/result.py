@@ -1,0 +1,519 @@
+"""Fit: values, covariance, limits, status as a sentence."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, field
+from enum import StrEnum
+from functools import cached_property
+from typing import TYPE_CHECKING, Any, Literal
+
+import numpy as np
+import numpy.typing as npt
+
+from vortexwidgets.fitting.limits import Profile, null_chi_square, of_nonlinear, of_strength, of_swirl_scale
+from vortexwidgets.fitting.problem import CENTRE_X, CENTRE_Y, CORE_RADIUS, SHAPE, Background, Problem
+from vortexwidgets.fitting.separable import Solution
+from vortexwidgets.formatting import format_number
+from vortexwidgets.uncertainty import PROBABILITIES, Estimate
+
+if TYPE_CHECKING:
+    from vortexwidgets.models.model import VortexModel
+    from vortexwidgets.models.vortex import Vortex
+
+FloatArray = npt.NDArray[np.float64]
+Uncertainties = Literal["absolute", "relative"]
+Loss = Literal["linear", "huber", "soft_l1"]
+
+# A core radius beyond these multiples of the nearest and the farthest sample is no longer seen by the survey.
+_TOO_SMALL, _TOO_LARGE = 1e-3, 1e3
+_SHAPE_RANGE = (1e-2, 1e3)
+_SUSPECT = 0.2  # relative standard uncertainty from which one-sidedness is looked for
+_NO_VORTEX = 1e-3  # chance at which the drop of chi-square by a vortex would be noise
+
+
+class FitError(RuntimeError):
+    """A fit that has no answer; its message is the status of the fit, which is in `.fit`."""
+
+    def __init__(self, message: str, fit: Fit | None = None) -> None:
+        super().__init__(message)
+        self.fit = fit
+
+
+class Status(StrEnum):
+    """How a fit ended."""
+
+    CONVERGED = "The fit converged."
+    STOPPED = "The fit did not converge: the iteration stopped before the sum of squares was at rest."
+    NO_VORTEX = "No vortex is seen: the samples are explained as well without one."
+
+
+@dataclass(frozen=True, eq=False)
+class Fit:
+    """One survey, one model: what was found and how well it is known.
+
+    Attributes
+    ----------
+    model : VortexModel
+        The profile that was fitted.
+    names : tuple of str
+        Free parameters, in the order of `values`: the strength (circulation or swirl_scale), the background, then
+        centre_x, centre_y, core_radius and shape parameters as far as they were free.
+    values, standard_uncertainties : ndarray, shape (P,)
+        In SI units; NaN for a parameter that the survey does not determine.
+    covariance : ndarray, shape (P, P)
+        Rows and columns of undetermined parameters are NaN.
+    chi_square : float
+        Weighted sum of squared residuals; with unknown scatter in (m/s)².
+    degrees_of_freedom : int
+        Samples less free parameters.
+    uncertainties : {"absolute", "relative"}
+        Whether the covariance uses the stated uncertainties or the scatter of the residuals.
+
+    Notes
+    -----
+    95 % limits come from the profile likelihood, which equals the linear limits where those hold.
+    """
+
+    model: VortexModel
+    names: tuple[str, ...]
+    chi_square: float
+    degrees_of_freedom: int
+    uncertainties: Uncertainties
+    background: Background
+    loss: Loss
+    evaluations: int
+    remarks: tuple[str, ...]
+    _problem: Problem = field(repr=False)
+    _solution: Solution = field(repr=False)
+
+    # What was found ------------------------------------------------------------------------------------------------
+
+    @cached_property
+    def _best(self) -> FloatArray:
+        """Every free parameter at the minimum, determined or not."""
+        solution = self._solution
+        return np.concatenate([solution.linear, [solution.nonlinear[i] for i in solution.free]])
+
+    @cached_property
+    def _full_covariance(self) -> FloatArray:
+        solution = self._solution
+        normal, scale = solution.normal, solution.scale
+        keep = np.array([name not in self._open for name in self.names])
+        covariance = np.full(normal.shape, math.nan)
+        part = normal[np.ix_(keep, keep)]
+        size = np.sqrt(part.diagonal())
+        size = np.where(size > 0.0, size, 1.0)
+        try:
+            inverse = np.linalg.inv(part / size / size[:, None]) / size / size[:, None]
+        except np.linalg.LinAlgError:
+            return covariance
+        if self.loss != "linear":
+            # Huber's sandwich: the rows carry the weights of the robust loss.
+            rows = solution.jacobian[keep] * solution.residuals
+            inverse = inverse @ (rows @ rows.T) @ inverse
+        elif self.uncertainties == "relative":
+            inverse = inverse * (self.chi_square / max(self.degrees_of_freedom, 1))
+        covariance[np.ix_(keep, keep)] = inverse * np.outer(scale[keep], scale[keep])
+        return covariance
+
+    @cached_property
+    def covariance(self) -> FloatArray:
+        """Covariance of the free parameters, shape (P, P), SI units."""
+        return self._full_covariance
+
+    @cached_property
+    def values(self) -> FloatArray:
+        """Best values of the free parameters, NaN where undetermined."""
+        return np.where([name in self.undetermined for name in self.names], math.nan, self._best)
+
+    @cached_property
+    def standard_uncertainties(self) -> FloatArray:
+        """Roots of the covariance's diagonal."""
+        variance = self.covariance.diagonal()
+        return np.sqrt(np.where(variance >= 0.0, variance, math.nan))
+
+    @cached_property
+    def scatter(self) -> float:
+        """Standard deviation of the weighted residuals about the fit: near 1 where stated uncertainties hold; else [m/s]."""
+        return math.sqrt(self.chi_square / max(self.degrees_of_freedom, 1))
+
+    @cached_property
+    def undetermined(self) -> tuple[str, ...]:
+        """Parameters for which the survey gives at best a one-sided limit."""
+        return tuple(self._open)
+
+    @cached_property
+    def _open(self) -> dict[str, str]:
+        """Undetermined parameters and the sentence for each."""
+        if not self._is_seen:
+            return dict.fromkeys(self.names, Status.NO_VORTEX.value)
+        found: dict[str, str] = {}
+        quick = self._quick_relative_uncertainty
+        for name in self.names:
+            index = self._nonlinear_index(name)
+            if index is None or index < CORE_RADIUS or quick.get(name, math.inf) < _SUSPECT:
+                continue
+            low, high = self._limits_of(name, 0.95)
+            if low > 0.0 and math.isfinite(high):
+                continue
+            found[name] = _one_sided(name, low, high)
+            if name == "core_radius" and not math.isfinite(high):
+                found[self._problem.strength_name] = (
+                    f"{self._problem.strength_name} is not determined: the survey does not reach outside the core."
+                )
+        return found
+
+    @cached_property
+    def _quick_relative_uncertainty(self) -> dict[str, float]:
+        """Linear relative uncertainty of the positive parameters, before anything is called undetermined."""
+        solution = self._solution
+        try:
+            inverse = np.linalg.inv(solution.normal)
+        except np.linalg.LinAlgError:
+            return {}
+        variance = inverse.diagonal() * (self._variance if self.loss == "linear" else 1.0)
+        relative = np.sqrt(np.where(variance >= 0.0, variance, math.inf))
+        return dict(zip(self.names, relative.tolist(), strict=True))
+
+    @property
+    def _variance(self) -> float:
+        """What one unit of chi-square stands for."""
+        if self.uncertainties == "absolute":
+            return 1.0
+        return self.chi_square / max(self.degrees_of_freedom, 1)
+
+    @cached_property
+    def _is_seen(self) -> bool:
+        from scipy.special import chdtrc
+
+        rise = null_chi_square(self._problem) - self.chi_square
+        extra = len(self._solution.free) + 1
+        unit = self._variance
+        if unit == 0.0:
+            return rise > 0.0
+        return bool(chdtrc(extra, max(rise, 0.0) / unit) < _NO_VORTEX)
+
+    @property
+    def converged(self) -> bool:
+        """Whether the sum of squares was at rest."""
+        return self._solution.converged
+
+    @cached_property
+    def status(self) -> str:
+        """How the fit ended and what it could not determine, in sentences."""
+        if not self._is_seen:
+            return Status.NO_VORTEX.value
+        first = Status.CONVERGED if self.converged else Status.STOPPED
+        return " ".join([first.value, *dict.fromkeys(self._open.values()), *self.remarks])
+
+    # One parameter --------------------------------------------------------------------------------------------------
+
+    def value(self, name: str) -> float:
+        """Best value of a parameter, a fixed one or a derived one (peak_radius, peak_swirl, miss_distance). [SI]
+
+        NaN where the survey does not determine it.
+        """
+        if name in self.names:
+            return float(self.values[self.names.index(name)])
+        if name in ("peak_radius", "peak_swirl"):
+            at, size = self.model.peak_of(*self._shape)
+            if name == "peak_radius":
+                return self.value("core_radius") * at
+            undetermined = "core_radius" in self.undetermined or self._problem.strength_name in self.undetermined
+            return math.nan if undetermined else self._swirl_scale * size
+        if name == "miss_distance":
+            return abs(self.value("centre_y"))
+        index = self._nonlinear_index(name)
+        if index is not None:
+            return float(self._solution.nonlinear[index])
+        raise KeyError(f"No parameter named {name!r}. Known: {', '.join([*self.names, 'peak_radius', 'peak_swirl'])}.")
+
+    def uncertainty(self, name: str) -> float:
+        """Standard uncertainty of a parameter [SI]; 0 for a fixed one, NaN for an undetermined one."""
+        if name in self.names:
+            return float(self.standard_uncertainties[self.names.index(name)])
+        if name == "miss_distance":
+            return self.uncertainty("centre_y")
+        if name in ("peak_radius", "peak_swirl"):
+            value = self.value(name)
+            return value * self._log_uncertainty(name) if value >= 0.0 else -value * self._log_uncertainty(name)
+        self.value(name)
+        return 0.0
+
+    def interval(self, name: str, level: float = 0.95) -> tuple[float, float]:
+        """Limits of a parameter by profile likelihood. [SI]
+
+        Parameters
+        ----------
+        name : str
+            A free parameter, or peak_radius, peak_swirl.
+        level : float
+            Coverage probability.
+
+        Returns
+        -------
+        tuple of float
+            (low, high); 0 or ±inf on a side that the survey leaves open.
+        """
+        if not 0.0 < level < 1.0:
+            raise ValueError(f"level must lie between 0 and 1, got {level}; 0.95 is usual.")
+        if name == "peak_radius":
+            at, _ = self.model.peak_of(*self._shape)
+            low, high = self.interval("core_radius", level)
+            return low * at, high * at
+        if name == "miss_distance":
+            low, high = sorted(abs(edge) for edge in self.interval("centre_y", level))
+            return low, high
+        if name not in self.names and name != "peak_swirl":
+            value = self.value(name)
+            return value, value
+        return self._limits_of(name, level)
+
+    def estimate(self, name: str) -> Estimate:
+        """A parameter with its standard uncertainty and its 95 % limits, as an Estimate."""
+        value, uncertainty = self.value(name), self.uncertainty(name)
+        low, high = self.interval(name)
+        if math.isnan(value):
+            bound: Literal["lower", "upper"] = "lower" if low > 0.0 else "upper"
+            edge = low if bound == "lower" else high
+            return Estimate(edge if math.isfinite(edge) else math.nan, math.nan, _quantity(name), bound=bound)
+        return Estimate(
+            value,
+            uncertainty,
+            _quantity(name),
+            quantiles=two_sided_quantiles(value, low, high),
+            degrees_of_freedom=self.degrees_of_freedom if self.uncertainties == "relative" else math.inf,
+        )
+
+    @property
+    def parameters(self) -> dict[str, Estimate]:
+        """Every free parameter as an Estimate."""
+        return {name: self.estimate(name) for name in self.names}
+
+    def core_pressure_drop(self, density: float) -> Estimate:
+        """Pressure far away less pressure on the axis, of this model alone. [Pa]
+
+        The uncertainty is the fit's; gain, density and the choice of model are added by `appraise`. Where the survey does
+        not enter the core the estimate is a lower bound.
+        """
+        low, high = self._limits_of("core_pressure_drop", 0.95)
+        constant = self.model.centre_pressure(*self._shape)
+        if self.undetermined and not math.isfinite(high) or math.isnan(self._swirl_scale):
+            return Estimate(density * low, math.nan, "core_pressure_drop", bound="lower")
+        value = density * self._swirl_scale**2 * constant
+        relative = self._log_uncertainty("core_pressure_drop")
+        return Estimate(
+            value,
+            value * relative,
+            "core_pressure_drop",
+            quantiles=two_sided_quantiles(value, density * low, density * high),
+        )
+
+    # The curve ------------------------------------------------------------------------------------------------------
+
+    @property
+    def centre(self) -> tuple[float, float]:
+        """Centre of the vortex in the survey's plane. [m]"""
+        return self._solution.nonlinear[CENTRE_X], self._solution.nonlinear[CENTRE_Y]
+
+    @cached_property
+    def vortex(self) -> Vortex:
+        """The fitted vortex.
+
+        Where the core radius is undetermined it stands at its 95 % limit, the shallowest vortex the survey allows.
+        """
+        from vortexwidgets.models.vortex import Vortex
+
+        solution = self._solution
+        if "core_radius" in self.undetermined:
+            low, high = self._limits_of("core_radius", 0.95)
+            edge = high if math.isfinite(high) else low
+            if edge > 0.0:
+                solution = self._profile("core_radius").at(edge, list(solution.nonlinear))
+        strength: dict[str, Any] = {self._problem.strength_name: solution.strength}
+        shape = {p.name: value for p, value in zip(self.model.shape, solution.nonlinear[SHAPE:], strict=True)}
+        return Vortex(
+            self.model,
+            core_radius=solution.nonlinear[CORE_RADIUS],
+            centre=(solution.nonlinear[CENTRE_X], solution.nonlinear[CENTRE_Y]),
+            **strength,
+            **shape,
+        )
+
+    @cached_property
+    def fitted(self) -> FloatArray:
+        """Fitted velocity at the included in-plane samples, background and instrument included, shape (N,). [m/s]"""
+        return np.asarray((self._problem.target - self._solution.residuals) * self._problem.uncertainty)
+
+    @cached_property
+    def residuals(self) -> FloatArray:
+        """Measured less fitted velocity, shape (N,). [m/s]"""
+        return np.asarray(self._solution.residuals * self._problem.uncertainty)
+
+    @cached_property
+    def normalised_residuals(self) -> FloatArray:
+        """Residuals over their uncertainties, shape (N,); over the scatter where that is unknown."""
+        return np.asarray(self._solution.residuals / math.sqrt(self._variance or 1.0))
+
+    @cached_property
+    def radius(self) -> FloatArray:
+        """Distance of the included in-plane samples from the centre, shape (N,). [m]"""
+        x, y = self._problem.x, self._problem.y
+        if self._problem.weights is not None:
+            x, y = x @ self._problem.weights, y @ self._problem.weights
+        return np.asarray(np.hypot(x - self.centre[0], y - self.centre[1]))
+
+    def __str__(self) -> str:
+        lines = [f"{self.model.name}: {self.status}"]
+        lines += [f"  {name} = {estimate}" for name, estimate in self.parameters.items()]
+        return "\n".join(lines)
+
+    # Inside ---------------------------------------------------------------------------------------------------------
+
+    @property
+    def _shape(self) -> list[float]:
+        return self._solution.nonlinear[SHAPE:]
+
+    @property
+    def _swirl_scale(self) -> float:
+        strength = self._solution.strength
+        return strength / (2.0 * math.pi * self._solution.nonlinear[CORE_RADIUS]) if self._problem.by_circulation else strength
+
+    def _nonlinear_index(self, name: str) -> int | None:
+        fixed = ("centre_x", "centre_y", "core_radius")
+        if name in fixed:
+            return fixed.index(name)
+        for index, parameter in enumerate(self.model.shape, SHAPE):
+            if parameter.name == name:
+                return index
+        return None
+
+    def _log_uncertainty(self, name: str) -> float:
+        """Relative standard uncertainty of a derived quantity, linear in the logarithms."""
+        gradient = np.zeros(len(self.names))
+        power = {"peak_swirl": 1.0, "core_pressure_drop": 2.0, "peak_radius": 0.0}[name]
+        for position, label in enumerate(self.names):
+            if label == self._problem.strength_name:
+                gradient[position] = power / self._solution.strength
+            elif label == "core_radius":
+                change = -power * self._problem.by_circulation + (name == "peak_radius")
+                gradient[position] = change / self._solution.nonlinear[CORE_RADIUS]
+            elif (index := self._nonlinear_index(label)) is not None and index >= SHAPE:
+                gradient[position] = _relative_slope(self._measure(name), self._shape, index - SHAPE)
+        used = gradient != 0.0
+        part = self.covariance[np.ix_(used, used)]
+        return math.sqrt(max(float(gradient[used] @ part @ gradient[used]), 0.0))
+
+    def _measure(self, name: str) -> Any:
+        if name == "core_pressure_drop":
+            return self.model.centre_pressure
+        which = 0 if name == "peak_radius" else 1
+        return lambda *shape: abs(self.model.peak_of(*shape)[which])
+
+    def _profile(self, name: str) -> Profile:
+        problem, solution = self._problem, self._solution
+        quick = self._quick_relative_uncertainty.get(name, math.nan)
+        if name == problem.strength_name:
+            return of_strength(problem, solution, quick * abs(solution.strength))
+        if name in problem.background_names:
+            raise KeyError(name)
+        if name == "core_pressure_drop":
+            root = abs(self._swirl_scale) * math.sqrt(self.model.centre_pressure(*self._shape))
+            return of_swirl_scale(
+                problem, solution, root, 0.1 * root, lambda *shape: math.sqrt(self.model.centre_pressure(*shape))
+            )
+        if name == "peak_swirl":
+            peak = abs(self._swirl_scale) * abs(self.model.peak_of(*self._shape)[1])
+            return of_swirl_scale(problem, solution, peak, 0.1 * peak, self._measure(name))
+        index = self._nonlinear_index(name)
+        if index is None:
+            raise KeyError(name)
+        scale = solution.nonlinear[CORE_RADIUS] if index <= CORE_RADIUS else solution.nonlinear[index]
+        return of_nonlinear(problem, solution, index, quick * scale)
+
+    def _limits_of(self, name: str, level: float) -> tuple[float, float]:
+        store: dict[tuple[str, float], tuple[float, float]] = self.__dict__.setdefault("_limit_store", {})
+        if (name, level) not in store:
+            store[name, level] = self._find_limits(name, level)
+        return store[name, level]
+
+    def _find_limits(self, name: str, level: float) -> tuple[float, float]:
+        unit = math.sqrt(self._variance)
+        distance = self._coverage_factor(level) * unit
+        if name in self._problem.background_names or self.loss != "linear" or distance == 0.0:
+            value = self._best[self.names.index(name)] if name in self.names else self.value(name)
+            half = self._coverage_factor(level) * self.uncertainty(name)
+            return float(value - half), float(value + half)
+        floor, ceiling = self._range_of(name)
+        profile = self._profile(name)
+        low = profile.limit(distance, -1, floor, ceiling)
+        high = profile.limit(distance, +1, floor, ceiling)
+        if name == "core_pressure_drop":
+            return low * low, high * high
+        if name == "peak_swirl" and self._swirl_scale < 0.0:
+            return -high, -low
+        return low, high
+
+    def _range_of(self, name: str) -> tuple[float, float]:
+        near, far = float(self.radius.min()), float(self.radius.max())
+        near = max(near, 1e-6 * far)
+        if name == "core_radius":
+            return _TOO_SMALL * near, _TOO_LARGE * far
+        index = self._nonlinear_index(name)
+        if index is not None and index >= SHAPE:
+            return _SHAPE_RANGE
+        if name in ("centre_x", "centre_y"):
+            return 0.0, 1e3 * (far + abs(self._solution.nonlinear[index or 0]))
+        reference = abs(self._solution.strength) if name == self._problem.strength_name else abs(self._swirl_scale)
+        return 1e-9 * reference, 1e6 * reference
+
+    def _coverage_factor(self, level: float) -> float:
+        from scipy.special import ndtri, stdtrit
+
+        tail = 0.5 + 0.5 * level
+        if self.uncertainties == "relative":
+            return float(stdtrit(max(self.degrees_of_freedom, 1), tail))
+        return float(ndtri(tail))
+
+
+def two_sided_quantiles(value: float, low: float, high: float) -> tuple[float, ...] | None:
+    """Quantiles of a distribution that has a median and 95 % limits: normal on each side, in the logarithm if positive."""
+    from statistics import NormalDist
+
+    if not (math.isfinite(low) and math.isfinite(high) and low < value < high):
+        return None
+    normal = NormalDist()
+    factor = normal.inv_cdf(0.975)
+    probit = np.array([normal.inv_cdf(p) for p in PROBABILITIES])
+    if low > 0.0:
+        below, above = math.log(value / low) / factor, math.log(high / value) / factor
+        table = value * np.exp(probit * np.where(probit < 0.0, below, above))
+    else:
+        below, above = (value - low) / factor, (high - value) / factor
+        table = value + probit * np.where(probit < 0.0, below, above)
+    return tuple(table.tolist())
+
+
+def _relative_slope(measure: Any, shape: list[float], which: int) -> float:
+    """d ln m / d(shape parameter)."""
+    h = 1e-5 * shape[which]
+    up, down = list(shape), list(shape)
+    up[which] += h
+    down[which] -= h
+    return float((math.log(measure(*up)) - math.log(measure(*down))) / (2.0 * h))
+
+
+def _quantity(name: str) -> str:
+    known = {"background_x": "background_velocity", "background_y": "background_velocity"}
+    return "velocity_gradient" if name.startswith("gradient") else known.get(name, name)
+
+
+def _one_sided(name: str, low: float, high: float) -> str:
+    unit = "m" if name == "core_radius" else ""
+    if not math.isfinite(high) and low <= 0.0:
+        return f"{name} is not determined."
+    if not math.isfinite(high):
+        return f"{name} is not determined; it is above {format_number(low, unit)} (95 %)."
+    why = ": the survey does not enter the core" if name == "core_radius" else ""
+    return f"{name} is not determined{why}; it is below {format_number(high, unit)} (95 %)."
