@@ -43,6 +43,7 @@ ORDER = [
     "widgets.state",
     "widgets.controls",
     "widgets.canvas",
+    "widgets.panel",
     "widgets.model_panel",
     "widgets.survey_panel",
     "widgets.appraisal_panel",
