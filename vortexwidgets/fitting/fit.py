@@ -259,10 +259,7 @@ def _robust(problem: Problem, settings: Settings, solution: Solution) -> tuple[P
     """Iteratively reweighted least squares; the scale is one standard uncertainty, or the scatter's robust estimate."""
     original = problem
     for _ in range(_ROBUST_ROUNDS):
-        response, _derivatives = original.columns(solution.nonlinear, ())
-        residual = original.target - solution.strength * response
-        if len(original.background):
-            residual = residual - solution.linear[1:] @ original.background
+        residual = replace(solution, problem=original).residuals
         scale = 1.0
         if settings.uncertainties == "relative":
             scale = 1.4826 * float(np.median(np.abs(residual))) or 1.0
@@ -274,7 +271,7 @@ def _robust(problem: Problem, settings: Settings, solution: Solution) -> tuple[P
         move = np.abs(np.subtract(solution.nonlinear, before.nonlinear)) / solution.nonlinear[CORE_RADIUS]
         if float(move.max()) < 1e-8:
             break
-    return problem, replace(solution, residuals=solution.residuals)
+    return problem, solution
 
 
 def _model(model: str | VortexModel) -> VortexModel:

@@ -92,12 +92,21 @@ def of_nonlinear(problem: Problem, minimum: Solution, index: int, step: float) -
 
 
 def of_strength(problem: Problem, minimum: Solution, step: float) -> Profile:
-    """Profile of the strength itself."""
+    """Profile of the strength itself: circulation or swirl scale."""
+    still = [0.0] * (len(minimum.nonlinear) - CORE_RADIUS)
+    value = minimum.swirl_scale
+    if problem.by_circulation:
+        value *= 2.0 * math.pi * minimum.nonlinear[CORE_RADIUS]
 
-    def at(value: float, nuisance: list[float]) -> Solution:
-        return solve(problem, nuisance, minimum.free, lambda _radius, _shape: (value, _still(minimum)))
+    def tie(target: float) -> Tie:
+        if problem.by_circulation:
+            return lambda core_radius, _shape: (target / (2.0 * math.pi * core_radius), [-1.0, *still[1:]])
+        return lambda _core_radius, _shape: (target, still)
 
-    return Profile(problem, minimum, minimum.strength, step, False, at)
+    def at(target: float, nuisance: list[float]) -> Solution:
+        return solve(problem, nuisance, minimum.free, tie(target))
+
+    return Profile(problem, minimum, value, step, False, at)
 
 
 def of_swirl_scale(
@@ -110,25 +119,19 @@ def of_swirl_scale(
     measure : callable
         m(shape...), evaluated by the model's kernels.
     """
-    sign = math.copysign(1.0, minimum.strength)
+    sign = math.copysign(1.0, minimum.swirl_scale)
 
     def tie(target: float) -> Tie:
-        def strength(core_radius: float, shape: list[float]) -> tuple[float, list[float]]:
-            slopes = [1.0 if problem.by_circulation else 0.0]
-            slopes += [-_log_slope(measure, shape, which) for which in range(len(shape))]
-            scale = 2.0 * math.pi * core_radius if problem.by_circulation else 1.0
-            return sign * scale * target / measure(*shape), slopes
+        def swirl_scale(_core_radius: float, shape: list[float]) -> tuple[float, list[float]]:
+            slopes = [0.0, *(-_log_slope(measure, shape, which) for which in range(len(shape)))]
+            return sign * target / measure(*shape), slopes
 
-        return strength
+        return swirl_scale
 
     def at(target: float, nuisance: list[float]) -> Solution:
         return solve(problem, nuisance, minimum.free, tie(target))
 
     return Profile(problem, minimum, value, step, True, at)
-
-
-def _still(minimum: Solution) -> list[float]:
-    return [0.0] * (len(minimum.nonlinear) - CORE_RADIUS)
 
 
 def _log_slope(measure: Callable[..., float], shape: list[float], which: int) -> float:

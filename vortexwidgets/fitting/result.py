@@ -93,34 +93,50 @@ class Fit:
     def _best(self) -> FloatArray:
         """Every free parameter at the minimum, determined or not."""
         solution = self._solution
-        return np.concatenate([solution.linear, [solution.nonlinear[i] for i in solution.free]])
+        return np.array([self._strength, *solution.linear[1:], *(solution.nonlinear[i] for i in solution.free)])
 
     @cached_property
-    def _full_covariance(self) -> FloatArray:
-        solution = self._solution
-        normal, scale = solution.normal, solution.scale
-        keep = np.array([name not in self._open for name in self.names])
-        covariance = np.full(normal.shape, math.nan)
-        part = normal[np.ix_(keep, keep)]
-        size = np.sqrt(part.diagonal())
-        size = np.where(size > 0.0, size, 1.0)
+    def _linear_covariance(self) -> FloatArray:
+        """Covariance by relative change of strength and nonlinear parameters, all parameters taken as determined."""
+        normal = self._solution.normal
         try:
-            inverse = np.linalg.inv(part / size / size[:, None]) / size / size[:, None]
+            inverse = np.linalg.inv(normal)
         except np.linalg.LinAlgError:
-            return covariance
+            return np.full(normal.shape, math.nan)
+        return self._turned(self._with_variance(inverse, self._solution.jacobian))
+
+    def _with_variance(self, inverse: FloatArray, jacobian: FloatArray) -> FloatArray:
         if self.loss != "linear":
             # Huber's sandwich: the rows carry the weights of the robust loss.
-            rows = solution.jacobian[keep] * solution.residuals
-            inverse = inverse @ (rows @ rows.T) @ inverse
-        elif self.uncertainties == "relative":
-            inverse = inverse * (self.chi_square / max(self.degrees_of_freedom, 1))
-        covariance[np.ix_(keep, keep)] = inverse * np.outer(scale[keep], scale[keep])
+            rows = jacobian * self._solution.residuals
+            return np.asarray(inverse @ (rows @ rows.T) @ inverse)
+        return inverse if self.uncertainties == "absolute" else inverse * self._variance
+
+    def _turned(self, covariance: FloatArray) -> FloatArray:
+        """From the swirl scale to the strength: circulation is swirl scale times 2π core_radius."""
+        if self._problem.by_circulation and "core_radius" in self.names:
+            row = self.names.index("core_radius")
+            covariance = covariance.copy()
+            covariance[0] += covariance[row]
+            covariance[:, 0] += covariance[:, row]
         return covariance
 
     @cached_property
     def covariance(self) -> FloatArray:
         """Covariance of the free parameters, shape (P, P), SI units."""
-        return self._full_covariance
+        scale = self._solution.scale.copy()
+        scale[0] = self._strength
+        covariance = self._linear_covariance
+        if self._open:
+            # What is not determined is held at its limit; the rest is known given that.
+            keep = np.flatnonzero([name not in self._open for name in self.names])
+            covariance = np.full(covariance.shape, math.nan)
+            if len(keep):
+                part = np.ix_(keep, keep)
+                solution = self._solution
+                inverse = np.linalg.pinv(solution.normal[part], hermitian=True)
+                covariance[part] = self._with_variance(inverse, solution.jacobian[keep])
+        return covariance * scale * scale[:, None]
 
     @cached_property
     def values(self) -> FloatArray:
@@ -149,11 +165,12 @@ class Fit:
         if not self._is_seen:
             return dict.fromkeys(self.names, Status.NO_VORTEX.value)
         found: dict[str, str] = {}
-        quick = self._quick_relative_uncertainty
-        for name in self.names:
-            index = self._nonlinear_index(name)
-            if index is None or index < CORE_RADIUS or quick.get(name, math.inf) < _SUSPECT:
+        first = 1 + len(self._problem.background)
+        relative = self._linear_covariance.diagonal().tolist()
+        for position, index in enumerate(self._solution.free, first):
+            if index < CORE_RADIUS or 0.0 <= relative[position] < _SUSPECT**2:
                 continue
+            name = self.names[position]
             low, high = self._limits_of(name, 0.95)
             if low > 0.0 and math.isfinite(high):
                 continue
@@ -164,18 +181,6 @@ class Fit:
                 )
         return found
 
-    @cached_property
-    def _quick_relative_uncertainty(self) -> dict[str, float]:
-        """Linear relative uncertainty of the positive parameters, before anything is called undetermined."""
-        solution = self._solution
-        try:
-            inverse = np.linalg.inv(solution.normal)
-        except np.linalg.LinAlgError:
-            return {}
-        variance = inverse.diagonal() * (self._variance if self.loss == "linear" else 1.0)
-        relative = np.sqrt(np.where(variance >= 0.0, variance, math.inf))
-        return dict(zip(self.names, relative.tolist(), strict=True))
-
     @property
     def _variance(self) -> float:
         """What one unit of chi-square stands for."""
@@ -185,11 +190,13 @@ class Fit:
 
     @cached_property
     def _is_seen(self) -> bool:
-        from scipy.special import chdtrc
-
         rise = null_chi_square(self._problem) - self.chi_square
         extra = len(self._solution.free) + 1
         unit = self._variance
+        if rise > 1e3 * extra * unit:
+            return True
+        from scipy.special import chdtrc
+
         if unit == 0.0:
             return rise > 0.0
         return bool(chdtrc(extra, max(rise, 0.0) / unit) < _NO_VORTEX)
@@ -331,11 +338,13 @@ class Fit:
             edge = high if math.isfinite(high) else low
             if edge > 0.0:
                 solution = self._profile("core_radius").at(edge, list(solution.nonlinear))
-        strength: dict[str, Any] = {self._problem.strength_name: solution.strength}
+        core_radius = solution.nonlinear[CORE_RADIUS]
+        turned = 2.0 * math.pi * core_radius if self._problem.by_circulation else 1.0
+        strength: dict[str, Any] = {self._problem.strength_name: solution.swirl_scale * turned}
         shape = {p.name: value for p, value in zip(self.model.shape, solution.nonlinear[SHAPE:], strict=True)}
         return Vortex(
             self.model,
-            core_radius=solution.nonlinear[CORE_RADIUS],
+            core_radius=core_radius,
             centre=(solution.nonlinear[CENTRE_X], solution.nonlinear[CENTRE_Y]),
             **strength,
             **shape,
@@ -359,9 +368,7 @@ class Fit:
     @cached_property
     def radius(self) -> FloatArray:
         """Distance of the included in-plane samples from the centre, shape (N,). [m]"""
-        x, y = self._problem.x, self._problem.y
-        if self._problem.weights is not None:
-            x, y = x @ self._problem.weights, y @ self._problem.weights
+        x, y = self._problem.position
         return np.asarray(np.hypot(x - self.centre[0], y - self.centre[1]))
 
     def __str__(self) -> str:
@@ -377,8 +384,12 @@ class Fit:
 
     @property
     def _swirl_scale(self) -> float:
-        strength = self._solution.strength
-        return strength / (2.0 * math.pi * self._solution.nonlinear[CORE_RADIUS]) if self._problem.by_circulation else strength
+        return self._solution.swirl_scale
+
+    @property
+    def _strength(self) -> float:
+        scale = self._solution.swirl_scale
+        return scale * 2.0 * math.pi * self._solution.nonlinear[CORE_RADIUS] if self._problem.by_circulation else scale
 
     def _nonlinear_index(self, name: str) -> int | None:
         fixed = ("centre_x", "centre_y", "core_radius")
@@ -395,7 +406,7 @@ class Fit:
         power = {"peak_swirl": 1.0, "core_pressure_drop": 2.0, "peak_radius": 0.0}[name]
         for position, label in enumerate(self.names):
             if label == self._problem.strength_name:
-                gradient[position] = power / self._solution.strength
+                gradient[position] = power / self._strength
             elif label == "core_radius":
                 change = -power * self._problem.by_circulation + (name == "peak_radius")
                 gradient[position] = change / self._solution.nonlinear[CORE_RADIUS]
@@ -413,9 +424,12 @@ class Fit:
 
     def _profile(self, name: str) -> Profile:
         problem, solution = self._problem, self._solution
-        quick = self._quick_relative_uncertainty.get(name, math.nan)
+        quick = math.nan
+        if name in self.names:
+            variance = float(self._linear_covariance.diagonal()[self.names.index(name)])
+            quick = math.sqrt(variance) if variance >= 0.0 else math.nan
         if name == problem.strength_name:
-            return of_strength(problem, solution, quick * abs(solution.strength))
+            return of_strength(problem, solution, quick * abs(self._strength))
         if name in problem.background_names:
             raise KeyError(name)
         if name == "core_pressure_drop":
@@ -465,7 +479,7 @@ class Fit:
             return _SHAPE_RANGE
         if name in ("centre_x", "centre_y"):
             return 0.0, 1e3 * (far + abs(self._solution.nonlinear[index or 0]))
-        reference = abs(self._solution.strength) if name == self._problem.strength_name else abs(self._swirl_scale)
+        reference = abs(self._strength) if name == self._problem.strength_name else abs(self._swirl_scale)
         return 1e-9 * reference, 1e6 * reference
 
     def _coverage_factor(self, level: float) -> float:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TypeAlias
 
 import numpy as np
@@ -14,41 +15,83 @@ from vortexwidgets.fitting.problem import CORE_RADIUS, Problem
 
 FloatArray = npt.NDArray[np.float64]
 
-# A strength that is not free but follows from core radius and shape: (strength, its derivatives by relative change of
-# core radius and of each shape parameter, divided by the strength).
+# A swirl scale that is not free but follows from core radius and shape: (swirl scale, its derivatives by relative change
+# of core radius and of each shape parameter, divided by itself).
 Tie: TypeAlias = Callable[[float, list[float]], tuple[float, list[float]]]
 
 _STEPS = 60
-_DECREMENT = 1e-15  # squared distance to the minimum, in standard uncertainties, at which the iteration ends
-_QUADRATIC = 1e-10  # of chi-square: below this promise a step is taken without asking whether chi-square fell
+# Squared distances to the minimum, in standard uncertainties.
+_QUADRATIC = 1e-6  # from here on the iteration converges linearly at a constant rate
+_REMAINING = 1e-10  # predicted after the next step: the iteration ends
+_LEVEL = 1e-9  # below this promise a step is taken without asking whether chi-square, by now rounding, fell
+_EPSILON = 1e-15  # of the power of the data: rounding of chi-square
 _ROUNDING = 1e-26  # of the power of the data: what is left when a model fits exactly
 _LARGEST = 1.0  # of a relative step
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(eq=False)
 class Solution:
     """A minimum, or where the iteration stopped.
 
-    `normal` is the matrix of normal equations by the scaled parameters [strength?, background..., free nonlinear...];
-    `scale` turns their relative steps into parameters.
+    The scaled parameters are [swirl scale (unless tied), background..., free nonlinear...]; the swirl scale and the
+    nonlinear ones by relative change, and `scale` turns them into parameters.
     """
 
+    problem: Problem
     nonlinear: list[float]
     free: tuple[int, ...]
-    linear: FloatArray  # strength, background...
-    chi_square: float
-    residuals: FloatArray
-    normal: FloatArray
-    scale: FloatArray
-    jacobian: FloatArray  # (parameters, N), scaled
+    linear: list[float]  # swirl scale, background...
     steps: int
     converged: bool
     tied: bool
+    _state: _State
 
     @property
-    def strength(self) -> float:
-        """The strength, free or tied."""
-        return float(self.linear[0])
+    def swirl_scale(self) -> float:
+        """Γ/(2π core_radius), or V. [m/s]"""
+        return self.linear[0]
+
+    @cached_property
+    def chi_square(self) -> float:
+        """Sum of squared weighted residuals, and of the prior's."""
+        value = self._state.chi_square
+        if value > 1e-8 * self.problem.power:
+            return value
+        # The difference of two nearly equal sums has lost its digits: sum the residuals themselves.
+        return float(self.residuals @ self.residuals)
+
+    @cached_property
+    def residuals(self) -> FloatArray:
+        """Weighted residuals, shape (N,)."""
+        response, _ = self.problem.columns(self.nonlinear, ())
+        residuals = self.problem.target - self.linear[0] * response
+        if len(self.problem.background):
+            residuals -= np.array(self.linear[1:]) @ self.problem.background
+        return residuals
+
+    @cached_property
+    def normal(self) -> FloatArray:
+        """Matrix of the normal equations by the scaled parameters, shape (P, P)."""
+        factor = self._factors
+        size = len(factor)
+        return np.array(self._state.products)[:, :size] * factor * factor[:, None]
+
+    @cached_property
+    def jacobian(self) -> FloatArray:
+        """Derivatives of the weighted model by the scaled parameters, shape (P, N)."""
+        return np.array(self._state.columns) * self._factors[:, None]
+
+    @property
+    def _factors(self) -> FloatArray:
+        strength = self.linear[0]
+        return np.array([strength] * (not self.tied) + [1.0] * (len(self.linear) - 1) + [strength] * len(self.free))
+
+    @cached_property
+    def scale(self) -> FloatArray:
+        """Parameter change per scaled change, shape (P,)."""
+        strength = [] if self.tied else [self.linear[0]]
+        lengths = [self.nonlinear[max(index, CORE_RADIUS)] for index in self.free]
+        return np.array(strength + [1.0] * (len(self.linear) - 1) + lengths)
 
 
 def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie | None = None) -> Solution:
@@ -63,7 +106,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     free : tuple of int
         Which of them may move.
     tie : callable, optional
-        Makes the strength a function of core radius and shape, for the profile of a derived quantity.
+        Makes the swirl scale a function of core radius and shape, for the profile of a derived quantity.
 
     Returns
     -------
@@ -76,157 +119,171 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     """
     here = list(start)
     state = _state(problem, here, free, tie)
-    count = len(problem.target)
+    unit = 1.0 / len(problem.target)
     damping = 0.0
+    last_step: list[float] = []
     last = math.inf
     converged = False
     steps = 0
-    while steps < _STEPS and not converged:
+    while steps < _STEPS:
         steps += 1
-        step, decrement = _step(state.normal, state.gradient, damping)
-        if decrement <= max(_DECREMENT * state.chi_square / count, _ROUNDING * state.power):
+        step, decrement = state.step, state.decrement
+        noise = unit * state.chi_square
+        quadratic = decrement < _QUADRATIC * noise
+        if decrement <= _ROUNDING * problem.power or (quadratic and decrement > 0.25 * last):
             converged = True
             break
+        if quadratic and decrement * min(decrement / last, 1.0) < _REMAINING * noise:
+            # What is left after this step shrinks by a known factor: take the whole series at once.
+            series = _series(step, last_step)
+            here = _moved(here, free, [series * value for value in step])
+            state.linear = [a + series * (b - a) for a, b in zip(state.linear, state.full, strict=True)]
+            converged = True
+            break
+        if damping:
+            step = _damped(state, damping, len(free))
         trial = _moved(here, free, step)
         new = _state(problem, trial, free, tie)
-        if decrement < _QUADRATIC * state.chi_square:  # so near that chi-square itself is only rounding
+        if new.chi_square <= state.chi_square + _EPSILON * problem.power or decrement < _LEVEL * noise:
             here, state = trial, new
-            converged = decrement > 0.25 * last
-            last = decrement
-        elif new.chi_square <= state.chi_square:
-            here, state = trial, new
+            last, last_step = (decrement, step) if not damping else (math.inf, [])
             damping = 0.1 * damping if damping > 1e-4 else 0.0
         elif damping < 1e10:
             damping = max(10.0 * damping, 1e-3)
         else:
             break
-    return Solution(
-        nonlinear=here,
-        free=free,
-        linear=state.linear,
-        chi_square=state.chi_square,
-        residuals=state.residuals,
-        normal=state.normal,
-        scale=_scale(here, free, state, tied=tie is not None),
-        jacobian=state.rows,
-        steps=steps,
-        converged=converged,
-        tied=tie is not None,
-    )
+    return Solution(problem, here, free, state.linear, steps, converged, tie is not None, state)
 
 
-@dataclass(frozen=True, eq=False, slots=True)
+@dataclass(eq=False, slots=True)
 class _State:
-    linear: FloatArray
-    residuals: FloatArray
+    """Where the iteration stands: everything follows from the inner products of the columns."""
+
+    response: FloatArray
+    columns: list[FloatArray]  # background and derivatives, not yet times the strength
+    products: list[list[float]]
+    overlap: list[float]
+    strength: float
+    linear: list[float]  # eliminated at this point
+    full: list[float]  # the same after the step
+    step: list[float]  # relative, of the free nonlinear parameters
     chi_square: float
-    power: float
-    rows: FloatArray
-    normal: FloatArray
-    gradient: FloatArray
+    decrement: float
 
 
 def _state(problem: Problem, here: list[float], free: tuple[int, ...], tie: Tie | None) -> _State:
     response, derivatives = problem.columns(here, free)
-    target, background = problem.target, problem.background
-    number = len(background)
+    number = len(problem.background)
     if tie is None:
-        strength, level = _eliminate(response, background, target)
-        fixed = 0
+        rows = [response, *problem.background, *derivatives] if number else [response, *derivatives]
+        target = problem.target
+        eliminated = 1 + number
+        strength = math.nan
     else:
         strength, slopes = tie(here[CORE_RADIUS], here[3:])
-        level = _linear(background, target - strength * response) if number else _NOTHING
         derivatives = [
             column if index < CORE_RADIUS else column + slopes[index - CORE_RADIUS] * response
             for index, column in zip(free, derivatives, strict=True)
         ]
-        fixed = 1
-    rows = np.empty((1 - fixed + number + len(free), len(target)))
-    residuals = target - strength * response
-    first = 0
-    if not fixed:
-        np.multiply(response, strength, out=rows[0])
-        first = 1
-    if number:
-        residuals -= level @ background
-        rows[first : first + number] = background
-    for row, column in enumerate(derivatives, first + number):
-        np.multiply(column, strength, out=rows[row])
-    normal = rows @ rows.T
-    gradient = rows @ residuals
-    chi_square = float(residuals @ residuals)
-    power = float(target @ target)
+        rows = [*problem.background, *derivatives]
+        target = problem.target - strength * response
+        eliminated = number
+    matrix = np.array([*rows, target])
+    products: list[list[float]] = (matrix @ matrix.T).tolist()
+    overlap = products.pop()  # the last row and column are the target's
+    power = overlap.pop()
+    lower, half = _factor(products, overlap, 0, eliminated, [], [])
+    linear = _back(lower, half)
+    if tie is None:
+        strength = linear[0]
+    chi_square = power - sum([value * value for value in half])
     if problem.prior is not None and problem.prior[0] in free:
+        # In units of the matrix a relative step is strength times the step.
         index, value, uncertainty = problem.prior
-        off = (value - here[index]) / uncertainty
-        weight = here[CORE_RADIUS] / uncertainty
-        row = first + number + free.index(index)
+        off, weight = (value - here[index]) / uncertainty, here[CORE_RADIUS] / uncertainty
+        row = eliminated + free.index(index)
         chi_square += off * off
-        normal[row, row] += weight * weight
-        gradient[row] += weight * off
-    linear = np.empty(1 + number)
-    linear[0] = strength
-    linear[1:] = level
-    return _State(linear, residuals, chi_square, power, rows, normal, gradient)
+        products[row][row] += (weight / strength) ** 2
+        overlap[row] += weight * off / strength
+    lower, half = _factor(products, overlap, eliminated, len(overlap), lower, half)
+    solved = _back(lower, half)
+    decrement = sum([value * value for value in half[eliminated:]])
+    step = [value / strength for value in solved[eliminated:]] if strength else [0.0] * len(free)
+    full = solved[:eliminated]
+    if tie is not None:
+        linear, full = [strength, *linear], [strength, *full]
+    return _State(response, rows, products, overlap, strength, linear, full, step, chi_square, decrement)
 
 
-_NOTHING = np.empty(0)
+_SINGULAR = 1e-14  # of a diagonal element: what is left of it is rounding
 
 
-def _eliminate(response: FloatArray, background: FloatArray, target: FloatArray) -> tuple[float, FloatArray]:
-    if len(background) == 0:
-        weight = float(response @ response)
-        return (float(response @ target) / weight if weight > 0.0 else 0.0), _NOTHING
-    size = math.sqrt(float(response @ response))
-    if size == 0.0:
-        return 0.0, _linear(background, target)
-    basis = np.vstack([response / size, background])
-    level = _linear(basis, target)
-    return float(level[0]) / size, level[1:]
+def _factor(
+    matrix: list[list[float]], right: list[float], first: int, last: int, lower: list[list[float]], half: list[float]
+) -> tuple[list[list[float]], list[float]]:
+    """Continue a Cholesky factor L and L⁻¹ right by the rows first to last; a singular row is left out of the solution."""
+    lower, half = list(lower), list(half)
+    for i in range(first, last):
+        source = matrix[i]
+        row: list[float] = []
+        value = right[i]
+        pivot = source[i]
+        for j in range(i):
+            above = lower[j]
+            entry = source[j]
+            for k in range(j):
+                entry -= row[k] * above[k]
+            entry /= above[j]
+            row.append(entry)
+            pivot -= entry * entry
+            value -= entry * half[j]
+        if pivot <= _SINGULAR * source[i]:
+            row.append(math.inf)
+            half.append(0.0)
+        else:
+            pivot = math.sqrt(pivot)
+            row.append(pivot)
+            half.append(value / pivot)
+        lower.append(row)
+    return lower, half
 
 
-def _linear(basis: FloatArray, target: FloatArray) -> FloatArray:
-    size = np.sqrt(np.einsum("ij,ij->i", basis, basis))
-    size[size == 0.0] = 1.0
-    basis = basis / size[:, None]
-    try:
-        level = np.linalg.solve(basis @ basis.T, basis @ target)
-    except np.linalg.LinAlgError:
-        level = np.linalg.lstsq(basis.T, target, rcond=None)[0]
-    return np.asarray(level / size)
+def _back(lower: list[list[float]], half: list[float]) -> list[float]:
+    """Solve the transposed factor."""
+    result = list(half)
+    for i in range(len(result) - 1, -1, -1):
+        row = lower[i]
+        value = result[i] / row[i]
+        result[i] = value
+        for k in range(i):
+            result[k] -= row[k] * value
+    return result
 
 
-def _step(normal: FloatArray, gradient: FloatArray, damping: float) -> tuple[FloatArray, float]:
-    """Step in the scaled parameters and the decrease of chi-square that it promises."""
-    size = np.sqrt(normal.diagonal())
-    if not size.all():
-        size = np.where(size > 0.0, size, 1.0)
-    matrix = normal / size / size[:, None]
-    if damping:
-        matrix = matrix + damping * np.eye(len(size))
-    right = gradient / size
-    try:
-        step = np.linalg.solve(matrix, right)
-    except np.linalg.LinAlgError:
-        step = np.linalg.lstsq(matrix, right, rcond=1e-12)[0]
-    return step / size, float(step @ right)
+def _damped(state: _State, damping: float, free: int) -> list[float]:
+    """The step with the diagonal of the nonlinear parameters raised (Levenberg-Marquardt)."""
+    products = [list(row) for row in state.products]
+    for i in range(len(products) - free, len(products)):
+        products[i][i] *= 1.0 + damping
+    lower, half = _factor(products, state.overlap, 0, len(products), [], [])
+    return [value / state.strength for value in _back(lower, half)[len(products) - free :]] if state.strength else [0.0] * free
 
 
-def _moved(here: list[float], free: tuple[int, ...], step: FloatArray) -> list[float]:
+def _series(step: list[float], last: list[float]) -> float:
+    """Sum of the geometric series of steps over its first term, where two of them show the ratio (Aitken)."""
+    size = sum([value * value for value in last])
+    ratio = sum([a * b for a, b in zip(step, last, strict=True)]) / size if size else 0.0
+    return 1.0 / (1.0 - ratio) if abs(ratio) < 0.5 else 1.0
+
+
+def _moved(here: list[float], free: tuple[int, ...], step: list[float]) -> list[float]:
     """Lengths of the centre move by core radii; positive parameters move by a factor."""
     there = list(here)
     core_radius = here[CORE_RADIUS]
-    for index, change in zip(free, step[len(step) - len(free) :].tolist(), strict=True):
+    for index, change in zip(free, step, strict=True):
         if index < CORE_RADIUS:
             limit = 3.0 * _LARGEST
             there[index] = here[index] + core_radius * max(-limit, min(limit, change))
         else:
             there[index] = here[index] * math.exp(max(-_LARGEST, min(_LARGEST, change)))
     return there
-
-
-def _scale(here: list[float], free: tuple[int, ...], state: _State, *, tied: bool) -> FloatArray:
-    core_radius = here[CORE_RADIUS]
-    strength = [] if tied else [state.linear[0]]
-    background = [1.0] * (len(state.linear) - 1)
-    return np.array(strength + background + [core_radius if index <= CORE_RADIUS else here[index] for index in free])

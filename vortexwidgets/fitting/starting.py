@@ -31,9 +31,8 @@ def search(problem: Problem, *, centre: tuple[float | None, float | None], sever
     several : int
         How many different candidates are wanted.
     """
-    x = problem.x if problem.weights is None else problem.x @ problem.weights
-    y = problem.y if problem.weights is None else problem.y @ problem.weights
-    toward_x, toward_y = np.ravel(problem.toward_x), np.ravel(problem.toward_y)
+    x, y = problem.position
+    toward_x, toward_y = problem.toward
     target, background = problem.target, problem.background
     if len(target) > 2 * _MOST_POINTS:
         chosen = np.random.default_rng(0).choice(len(target), 2 * _MOST_POINTS, replace=False)
