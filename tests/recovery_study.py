@@ -25,7 +25,7 @@ TRUTHS = {
     "vatistas": {"circulation": 2.0, "exponent": 2.0},
     "taylor": {"swirl_scale": 30.0},
 }
-NOISE = (0.01, 0.03, 0.10)  # of the peak swirl
+NOISE = (0.01, 0.02, 0.05)  # of the peak swirl
 QUANTITIES = ("strength", "core radius", "core pressure drop")
 
 
@@ -37,14 +37,14 @@ class Case:
     vortex: vx.Vortex
 
 
-def simulate(key, noise, generator, points=40):
+def simulate(key, noise, generator, points=60):
     """A two-component traverse that misses an unknown centre, with a uniform background and Gaussian noise."""
     centre = generator.uniform(-0.5, 0.5, 2) * CORE_RADIUS * np.array([1.0, 0.6])
     vortex = vx.Vortex(key, core_radius=CORE_RADIUS, centre=tuple(centre), **TRUTHS[key])
     return Case(measure(vortex.velocity, abs(vortex.peak_swirl), noise, generator, points), vortex)
 
 
-def measure(velocity, peak, noise, generator, points=40):
+def measure(velocity, peak, noise, generator, points=60):
     """Both in-plane components along the x axis from -7 to 7 core radii."""
     position = np.sort(generator.uniform(-7.0, 7.0, points)) * CORE_RADIUS
     u, v = velocity(position, np.zeros(points))
@@ -150,7 +150,7 @@ def main(runs):
     print("# Recovery study\n")
     print(
         f"Share of {runs} seeded runs per cell whose 95 % limits contain the truth, made by `python tests/recovery_study.py {runs}`.\n"
-        "Each run is an invented traverse of 40 points from -7 to 7 core radii with both in-plane components, an unknown centre\n"
+        "Each run is an invented traverse of 60 points from -7 to 7 core radii with both in-plane components, an unknown centre\n"
         "(within half a core radius along the line, 0.3 across), an unknown uniform background (to 5 % of the peak) and Gaussian\n"
         "noise. Undetermined and failed fits count as misses. The Vatistas exponent is fitted.\n"
     )

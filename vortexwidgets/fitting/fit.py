@@ -20,7 +20,7 @@ from vortexwidgets.fitting.problem import (
     build_problem,
 )
 from vortexwidgets.fitting.result import Fit, FitError, Loss, Status, Uncertainties
-from vortexwidgets.fitting.separable import Solution, solve
+from vortexwidgets.fitting.separable import Solution, misfit, solve
 from vortexwidgets.fitting.starting import search
 
 if TYPE_CHECKING:
@@ -31,6 +31,7 @@ if TYPE_CHECKING:
 FloatArray = npt.NDArray[np.float64]
 
 _ROBUST_ROUNDS = 50
+_SCAN = tuple(2.0 ** (k / 2.0) for k in range(-4, 5))  # of the core radius about the search's
 
 
 @dataclass(frozen=True)
@@ -129,7 +130,7 @@ def fit_survey(
     )
     problem = problem_for(survey, model, settings)
     free, held = free_parameters(survey, model, fixed)
-    starts = _starts(survey, problem, held, start or {})
+    starts = _starts(problem, free, held, start or {})
     return fit_problem(problem, settings, free, starts, on_failure=on_failure, held=held)
 
 
@@ -182,8 +183,12 @@ def fit_problem(
             f"Survey has {samples} points but {problem.model.name} has {number} free parameters here; "
             "add points, fix a parameter or choose a smaller background."
         )
-    solutions = [solve(problem, start, free) for start in starts]
-    solution = solutions[0] if len(solutions) == 1 else min(solutions, key=lambda s: (not s.converged, s.chi_square))
+    solution = _lowest([solve(problem, start, free) for start in starts])
+    if len(starts) > 1 and (
+        not solution.converged or settings.uncertainties == "relative" or solution.chi_square > 2.0 * max(samples - number, 1)
+    ):
+        # Nothing says that this is the lowest minimum: look about more widely before believing it.
+        solution = _lowest([solution, *(solve(problem, start, free) for start in _wider(problem, free, starts))])
     if settings.loss != "linear":
         problem, solution = _robust(problem, settings, solution)
     fit = Fit(
@@ -204,8 +209,13 @@ def fit_problem(
     return fit
 
 
-def starts_for(problem: Problem, found: list[list[float]], held: Mapping[int, float]) -> list[list[float]]:
-    """Turn (centre_x, centre_y, peak_radius) of the search into starts of a model."""
+def starts_for(
+    problem: Problem, free: tuple[int, ...], found: list[list[float]], held: Mapping[int, float]
+) -> list[list[float]]:
+    """Turn (centre_x, centre_y, peak_radius) of the search into starts of a model.
+
+    The search knows one profile only, so the core radius is scanned again with the model's own.
+    """
     default = [parameter.default for parameter in problem.model.shape]
     at, _ = problem.model.peak_of(*default)
     starts = []
@@ -213,8 +223,29 @@ def starts_for(problem: Problem, found: list[list[float]], held: Mapping[int, fl
         start = [centre_x, centre_y, peak_radius / at, *default]
         for index, value in held.items():
             start[index] = value
+        if CORE_RADIUS in free:
+            scan = [[*start[:CORE_RADIUS], start[CORE_RADIUS] * factor, *start[SHAPE:]] for factor in _SCAN]
+            start = min(scan, key=lambda here: misfit(problem, here))
         starts.append(start)
     return starts
+
+
+def _lowest(solutions: list[Solution]) -> Solution:
+    return min(solutions, key=lambda solution: (not solution.converged, solution.chi_square))
+
+
+def _wider(problem: Problem, free: tuple[int, ...], starts: list[list[float]]) -> list[list[float]]:
+    """The three best of a scan about every start, in the centre and in the core radius."""
+    scan = []
+    for start in starts:
+        offsets_x = (-0.7, 0.0, 0.7) if CENTRE_X in free else (0.0,)
+        offsets_y = (-0.7, 0.0, 0.7) if CENTRE_Y in free else (0.0,)
+        for right in offsets_x:
+            for up in offsets_y:
+                for factor in _SCAN[::2]:
+                    radius = start[CORE_RADIUS]
+                    scan.append([start[0] + right * radius, start[1] + up * radius, radius * factor, *start[SHAPE:]])
+    return sorted(scan, key=lambda here: misfit(problem, here))[:3]
 
 
 def _refuse_failure(fit: Fit) -> None:
@@ -235,7 +266,7 @@ def _names(problem: Problem, free: tuple[int, ...]) -> tuple[str, ...]:
 
 
 def _starts(
-    survey: Survey, problem: Problem, held: Mapping[int, float], given: Mapping[str, float]
+    problem: Problem, free: tuple[int, ...], held: Mapping[int, float], given: Mapping[str, float]
 ) -> list[list[float]]:
     names = ["centre_x", "centre_y", "core_radius", *(parameter.name for parameter in problem.model.shape)]
     linear = (problem.strength_name, *problem.background_names)
@@ -252,7 +283,8 @@ def _starts(
         return [start]
     known = {**held, **wanted}
     found = search(problem, centre=(known.get(CENTRE_X), known.get(CENTRE_Y)), several=2)
-    return starts_for(problem, found, known)
+    rest = tuple(index for index in free if index not in wanted)
+    return starts_for(problem, rest, found, known)
 
 
 def _robust(problem: Problem, settings: Settings, solution: Solution) -> tuple[Problem, Solution]:

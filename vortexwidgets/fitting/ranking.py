@@ -207,7 +207,7 @@ def _fits(
         free, held = free_parameters(survey, model, {n: v for n, v in fixed.items() if n in names})
         problem = first.for_model(model)
         try:
-            fit = fit_problem(problem, settings, free, starts_for(problem, found, held), on_failure="return")
+            fit = fit_problem(problem, settings, free, starts_for(problem, free, found, held), on_failure="return")
         except ValueError as error:
             fits.append(None)
             failures.append(f"{model.name}: {error}")

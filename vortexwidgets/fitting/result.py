@@ -13,7 +13,7 @@ import numpy.typing as npt
 
 from vortexwidgets.fitting.limits import Profile, null_chi_square, of_nonlinear, of_strength, of_swirl_scale
 from vortexwidgets.fitting.problem import CENTRE_X, CENTRE_Y, CORE_RADIUS, SHAPE, Background, Problem
-from vortexwidgets.fitting.separable import Solution
+from vortexwidgets.fitting.separable import SHAPE_BOUNDS, Solution
 from vortexwidgets.formatting import format_number
 from vortexwidgets.uncertainty import PROBABILITIES, Estimate
 
@@ -27,7 +27,6 @@ Loss = Literal["linear", "huber", "soft_l1"]
 
 # A core radius beyond these multiples of the nearest and the farthest sample is no longer seen by the survey.
 _TOO_SMALL, _TOO_LARGE = 1e-3, 1e3
-_SHAPE_RANGE = (1e-2, 1e3)
 _SUSPECT = 0.2  # relative standard uncertainty from which one-sidedness is looked for
 _NO_VORTEX = 1e-3  # chance at which the drop of chi-square by a vortex would be noise
 
@@ -476,7 +475,7 @@ class Fit:
             return _TOO_SMALL * near, _TOO_LARGE * far
         index = self._nonlinear_index(name)
         if index is not None and index >= SHAPE:
-            return _SHAPE_RANGE
+            return SHAPE_BOUNDS
         if name in ("centre_x", "centre_y"):
             return 0.0, 1e3 * (far + abs(self._solution.nonlinear[index or 0]))
         reference = abs(self._strength) if name == self._problem.strength_name else abs(self._swirl_scale)

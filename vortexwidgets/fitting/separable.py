@@ -11,7 +11,7 @@ from typing import TypeAlias
 import numpy as np
 import numpy.typing as npt
 
-from vortexwidgets.fitting.problem import CORE_RADIUS, Problem
+from vortexwidgets.fitting.problem import CORE_RADIUS, SHAPE, Problem
 
 FloatArray = npt.NDArray[np.float64]
 
@@ -27,6 +27,9 @@ _LEVEL = 1e-9  # below this promise a step is taken without asking whether chi-s
 _EPSILON = 1e-15  # of the power of the data: rounding of chi-square
 _ROUNDING = 1e-26  # of the power of the data: what is left when a model fits exactly
 _LARGEST = 1.0  # of a relative step
+
+# A shape parameter beyond these no longer changes a profile that anyone could measure.
+SHAPE_BOUNDS = (0.02, 200.0)
 
 
 @dataclass(eq=False)
@@ -128,6 +131,8 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     while steps < _STEPS:
         steps += 1
         step, decrement = state.step, state.decrement
+        if len(here) > SHAPE and (stuck := _at_bounds(here, free, step)):
+            step, decrement = _step_without(state, stuck, len(free))
         noise = unit * state.chi_square
         quadratic = decrement < _QUADRATIC * noise
         if decrement <= _ROUNDING * problem.power or (quadratic and decrement > 0.25 * last):
@@ -153,6 +158,11 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
         else:
             break
     return Solution(problem, here, free, state.linear, steps, converged, tie is not None, state)
+
+
+def misfit(problem: Problem, here: list[float]) -> float:
+    """Chi-square at a point, with swirl scale and background eliminated."""
+    return _state(problem, here, (), None).chi_square
 
 
 @dataclass(eq=False, slots=True)
@@ -286,4 +296,27 @@ def _moved(here: list[float], free: tuple[int, ...], step: list[float]) -> list[
             there[index] = here[index] + core_radius * max(-limit, min(limit, change))
         else:
             there[index] = here[index] * math.exp(max(-_LARGEST, min(_LARGEST, change)))
+            if index >= SHAPE:
+                there[index] = min(max(there[index], SHAPE_BOUNDS[0]), SHAPE_BOUNDS[1])
     return there
+
+
+def _at_bounds(here: list[float], free: tuple[int, ...], step: list[float]) -> list[int]:
+    """Positions of shape parameters that want to leave their bounds."""
+    low, high = SHAPE_BOUNDS
+    return [
+        position
+        for position, index in enumerate(free)
+        if index >= SHAPE and ((here[index] >= high and step[position] > 0.0) or (here[index] <= low and step[position] < 0.0))
+    ]
+
+
+def _step_without(state: _State, stuck: list[int], free: int) -> tuple[list[float], float]:
+    """Step and promised decrease with some nonlinear parameters held."""
+    eliminated = len(state.overlap) - free
+    keep = [row for row in range(len(state.overlap)) if row - eliminated not in stuck]
+    products = [[state.products[row][column] for column in keep] for row in keep]
+    lower, half = _factor(products, [state.overlap[row] for row in keep], 0, len(keep), [], [])
+    solved = dict(zip(keep, _back(lower, half), strict=True))
+    step = [solved.get(eliminated + k, 0.0) / state.strength if state.strength else 0.0 for k in range(free)]
+    return step, sum([value * value for value in half[eliminated:]])
