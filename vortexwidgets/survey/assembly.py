@@ -120,10 +120,11 @@ def _radial(readings: Readings) -> dict[str, Any]:
 def _traverse(readings: Readings, place: str) -> dict[str, Any]:
     cross, sign, parallel, axial = _line_components(readings, place)
     if cross == "speed" and np.nanmin(readings.by_role["speed"].values) >= 0.0:
+        heading = readings.by_role["speed"].heading.text
         raise SurveyError(
-            f"{readings.file}, column '{readings.by_role['speed'].heading.text}': a speed has no sign, and a "
-            "traverse needs the component across the line, positive to the left of increasing position; give that, or name the column "
-            "'radius' where the centre is known."
+            f"{readings.file}, column '{heading}': a speed has no sign; a traverse needs the component across the line, "
+            "positive to the left of increasing position; give that, or name the position 'radius' where the centre is "
+            "known."
         )
     position = readings.length(place, "position along the line, the centre is fitted")
     meaning = "component across the line, positive to the left of increasing position"

@@ -21,7 +21,8 @@ _KEYS: dict[str, tuple[str, ...]] = {
     "humidity": ("humidity", "relative humidity"),
     "ambient_pressure": ("ambient pressure", "static pressure", "p inf", "absolute pressure", "reference pressure"),
     "surface_pressure": ("surface pressure", "atmospheric pressure", "barometric pressure", "barometer"),
-    "depth": ("depth", "depth of axis", "submergence"),
+    "depth": ("depth", "depth of axis", "depth of survey"),
+    "submergence": ("submergence", "submergence of intake", "intake depth"),
     "free_stream": (
         "free stream",
         "free stream speed",
@@ -159,6 +160,17 @@ def read_facts(comments: Iterable[tuple[int, str]], file: str) -> Facts:
     return Facts({**others, **values}, tuple(notes))
 
 
+def read_fact(fact: str, text: str) -> str | float | Estimate:
+    """Read the value of one fact given outside a file, as "1.000 ± 0.005" for the velocity gain.
+
+    Raises
+    ------
+    ValueError
+        If it cannot be read.
+    """
+    return _value(fact, fact.replace("_", " "), text, "given")
+
+
 def _key_and_unit(key: str) -> tuple[str, str]:
     found = re.fullmatch(r"(.+?)\s*[\[(]\s*([^\[\]()]+)\s*[\])]", key)
     return (found.group(1), found.group(2)) if found else (key, "")
@@ -167,7 +179,7 @@ def _key_and_unit(key: str) -> tuple[str, str]:
 def _value(fact: str, key: str, text: str, where: str) -> str | float | Estimate:
     """Read one value; messages say where it stands."""
     if fact in _FREE_TEXT:
-        return text[:LONGEST_TEXT]
+        return "".join(sign for sign in text if sign.isprintable())[:LONGEST_TEXT]
     if fact in _WORDS:
         word = _WORDS[fact].get(" ".join(text.lower().split()))
         if word is None:

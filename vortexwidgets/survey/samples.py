@@ -32,6 +32,7 @@ FACT_QUANTITIES: dict[str, str] = {
     "ambient_pressure": "ambient_pressure",
     "surface_pressure": "surface_pressure",
     "depth": "depth",
+    "submergence": "depth",
     "free_stream": "free_stream",
     "elevation": "elevation",
     "gravity": "gravity",

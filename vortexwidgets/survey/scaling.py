@@ -66,6 +66,8 @@ class Readings:
     def _roles(self) -> dict[str, Series]:
         found: dict[str, Series] = {}
         for item in self.series:
+            if item.heading.kind in ("", "text"):
+                continue
             key = f"{item.heading.role}:{item.heading.of}" if item.heading.of else item.heading.role
             if key in found:
                 raise SurveyError(
@@ -122,8 +124,8 @@ class Readings:
             bad = np.flatnonzero(np.abs(scaled) > limit)
         if bad.size:
             raise SurveyError(
-                f"{self.file}, row {self.rows[bad[0]]}, column '{heading.text}': {item.values[bad[0]]:g} {heading.unit} "
-                "is beyond anything that is measured; check the unit, or leave the cell empty."
+                f"{self.file}, row {self.rows[bad[0]]}, column '{heading.text}': {item.values[bad[0]]:g} "
+                f"{heading.unit} is beyond anything that is measured; check the unit, or leave the cell empty."
             )
         return scaled
 

@@ -11,6 +11,9 @@ from numpy.typing import NDArray
 from vortexwidgets.survey.samples import BoolArray, FloatArray
 from vortexwidgets.survey.survey import Survey
 
+Trend = tuple[FloatArray, FloatArray]
+"""What the neighbours make one expect, shape (N,), and how far each of them is from that, shape (N, neighbours)."""
+
 _LIMIT = 4.0
 """Twice the published 2: of the thousands of vectors of one survey, no good one should go."""
 
@@ -69,10 +72,10 @@ def screen(survey: Survey, centre: tuple[float, float] | None = None, peak_radiu
     A sample is an outlier when its distance from the median of its neighbours exceeds 4 (r_m + ε), where r_m is the
     median of the neighbours' own distances from that median (at least what the noise explains) and ε the noise level
     [1]_. The published limit is 2. The noise level is the stated uncertainty or the scatter of the samples about the
-    straight line between their neighbours, whichever is larger.
-    In the steep core the neighbours differ among themselves, r_m is large and good samples stay; a lone station inside
-    a core that the stations do not resolve is kept as well. Only gross errors are found; smaller ones are a robust
-    loss's job.
+    straight line between their neighbours, whichever is larger. A sample that lies on the trend of its neighbours is no
+    outlier, which matters at the ends of a survey. Where the neighbours turn sign the core lies between them, and r_m is
+    their second largest distance; a lone station inside a core that the stations do not resolve is kept as well. Only
+    gross errors are found; smaller ones are a robust loss's job.
 
     References
     ----------
@@ -88,7 +91,7 @@ def screen(survey: Survey, centre: tuple[float, float] | None = None, peak_radiu
     (3,)
     """
     outliers = _plane_outliers(survey) if survey.geometry == "plane" else _line_outliers(survey)
-    sentences = []
+    sentences = _masked(survey)
     if outliers.size:
         sentences.append(_listed(survey, outliers))
         survey = survey.without(outliers.tolist(), "outlier: normalised median test of Westerweel and Scarano (2005)")
@@ -97,7 +100,6 @@ def screen(survey: Survey, centre: tuple[float, float] | None = None, peak_radiu
     used = survey.in_plane
     if used.sum() < _FEWEST_SAMPLES:
         sentences.append(f"{used.sum()} samples leave little to test a model with; add points.")
-    sentences += _masked(survey)
     inside, reach = None, math.nan
     if (
         centre is not None
@@ -120,14 +122,64 @@ def _line_outliers(survey: Survey) -> NDArray[np.intp]:
         if component.size < _FEWEST_FOR_OUTLIERS:
             continue
         order = component[np.argsort(survey.x[component], kind="stable")]
-        velocity = survey.velocity[order]
+        position, velocity = survey.x[order], survey.velocity[order]
         neighbours = _window(order.size, 3 if order.size >= 20 else 2)
-        noise = np.full(order.size, _noise(survey.x[order], velocity))
-        if survey.uncertainty is not None:
-            noise = np.maximum(noise, survey.uncertainty[order])
-        suspect = _normalised(velocity, neighbours, noise) > _LIMIT
-        found += [int(order[i]) for i in np.flatnonzero(suspect) if not _lone_core_station(velocity, i)]
+        noise = _stated_or(survey, order, _noise(position, velocity))
+        trend = _theil_sen(position, velocity, neighbours)
+        suspect = np.flatnonzero(_ratio(velocity, neighbours, noise, trend) > _LIMIT)
+        found += [int(order[i]) for i in suspect if not _lone_core_station(velocity, i)]
     return np.array(sorted(found), dtype=np.intp)
+
+
+def _plane_outliers(survey: Survey) -> NDArray[np.intp]:
+    """Test whole vectors in the plane, and the axial component by itself."""
+    found: list[int] = []
+    rows = [np.flatnonzero(survey.included & (np.abs(survey.direction[:, kind]) == 1.0)) for kind in (0, 1, 2)]
+    if np.array_equal(survey.x[rows[0]], survey.x[rows[1]]) and np.array_equal(survey.y[rows[0]], survey.y[rows[1]]):
+        groups = [rows[:2], rows[2:]]
+    else:  # a component is missing here and there: each by itself
+        groups = [[component] for component in rows]
+    for group in groups:
+        if group[0].size < 2 * _FEWEST_FOR_OUTLIERS:
+            continue
+        points = np.column_stack([survey.x[group[0]], survey.y[group[0]]])
+        neighbours = _nearest(points, 8)
+        ratios = []
+        for component in group:
+            velocity = survey.velocity[component]
+            residual = velocity - np.median(velocity[neighbours], axis=1)
+            noise = _stated_or(survey, component, float(1.4826 * np.median(np.abs(residual))))
+            ratios.append(_ratio(velocity, neighbours, noise, _flat_trend(points, velocity, neighbours)))
+        suspect = np.flatnonzero(np.sqrt(np.sum(np.square(ratios), axis=0)) > _LIMIT)
+        vectors = np.column_stack([survey.velocity[component] for component in group])
+        vectors = vectors - np.median(vectors, axis=0)
+        for i in suspect:
+            if len(group) < 2 or not _core_vector(points, vectors, neighbours[i], int(i)):
+                found += [int(component[i]) for component in group]
+    return np.array(sorted(found), dtype=np.intp)
+
+
+def _ratio(velocity: FloatArray, neighbours: NDArray[np.intp], noise: FloatArray, trend: Trend) -> FloatArray:
+    """Normalised distance from the neighbours' median or from their trend, whichever is nearer."""
+    around = velocity[neighbours]
+    middle = np.median(around, axis=1)
+    level = np.median(velocity)
+    turns = (around.min(axis=1) < level - 3.0 * noise) & (around.max(axis=1) > level + 3.0 * noise)
+    floor = noise + 1e-9 * np.abs(velocity - level).max()
+    ratios = []
+    for expected, distances in ((middle, np.abs(around - middle[:, None])), trend):
+        ordered = np.sort(distances, axis=1)
+        # Where the neighbours turn sign the core lies between them: what they differ by is flow, not noise.
+        spread = np.where(turns, ordered[:, -2], np.median(ordered, axis=1))
+        # Neighbours can agree by chance; noise alone separates them by 0.6745 standard deviations in the median.
+        ratios.append(np.abs(velocity - expected) / (np.maximum(spread, 0.6745 * noise) + floor))
+    return np.asarray(np.minimum(*ratios))
+
+
+def _stated_or(survey: Survey, component: NDArray[np.intp], noise: float) -> FloatArray:
+    """Take the stated uncertainty or the noise that is seen, whichever is larger."""
+    seen = np.full(component.size, noise)
+    return seen if survey.uncertainty is None else np.maximum(seen, survey.uncertainty[component])
 
 
 def _window(number: int, half: int) -> NDArray[np.intp]:
@@ -146,47 +198,25 @@ def _noise(position: FloatArray, velocity: FloatArray) -> float:
     return float(1.4826 * np.median(np.abs(residual) / weight))
 
 
-def _normalised(velocity: FloatArray, neighbours: NDArray[np.intp], noise: FloatArray) -> FloatArray:
-    around = velocity[neighbours]
-    middle = np.median(around, axis=1)
-    spread = np.median(np.abs(around - middle[:, None]), axis=1)
-    # Six neighbours can agree by chance; noise alone separates them by 0.6745 standard deviations in the median.
-    spread = np.maximum(spread, 0.6745 * noise)
-    floor = np.finfo(float).eps * np.abs(velocity).max()
-    return np.asarray(np.abs(velocity - middle) / (spread + noise + floor))
+def _theil_sen(position: FloatArray, velocity: FloatArray, neighbours: NDArray[np.intp]) -> Trend:
+    """Value on the robust straight line through the neighbours, and their distances from that line."""
+    x, v = position[neighbours] - position[:, None], velocity[neighbours]
+    i, j = np.triu_indices(neighbours.shape[1], 1)
+    run, rise = x[:, j] - x[:, i], v[:, j] - v[:, i]
+    slope = np.median(np.divide(rise, run, out=np.zeros_like(run), where=run > 0.0), axis=1)
+    along = slope[:, None] * x
+    expected = np.median(v - along, axis=1)
+    return expected, np.abs(v - along - expected[:, None])
 
 
-def _lone_core_station(velocity: FloatArray, index: int) -> bool:
-    """Whether a station stands alone in an unresolved core: its neighbours turn sign and fall off on both sides."""
-    if not 2 <= index < velocity.size - 2:
-        return False
-    level = np.median(velocity)
-    far_left, left, own, right, far_right = velocity[index - 2 : index + 3] - level
-    falls_off = abs(left) > abs(far_left) and abs(right) > abs(far_right)
-    return bool(left * right < 0.0 and falls_off and abs(own) < _UNRESOLVED * max(abs(left), abs(right)))
-
-
-def _plane_outliers(survey: Survey) -> NDArray[np.intp]:
-    """Test whole vectors in the plane, and the axial component by itself."""
-    found: list[int] = []
-    rows = [np.flatnonzero(survey.included & (np.abs(survey.direction[:, kind]) == 1.0)) for kind in (0, 1, 2)]
-    if np.array_equal(survey.x[rows[0]], survey.x[rows[1]]) and np.array_equal(survey.y[rows[0]], survey.y[rows[1]]):
-        groups = [rows[:2], rows[2:]]
-    else:  # a component is missing here and there: each by itself
-        groups = [[component] for component in rows]
-    for group in groups:
-        if group[0].size < 2 * _FEWEST_FOR_OUTLIERS:
-            continue
-        points = np.column_stack([survey.x[group[0]], survey.y[group[0]]])
-        neighbours = _nearest(points, 8)
-        ratios = [_plane_ratio(survey, component, neighbours) for component in group]
-        suspect = np.flatnonzero(np.sqrt(np.sum(np.square(ratios), axis=0)) > _LIMIT)
-        velocity = np.column_stack([survey.velocity[component] for component in group])
-        velocity = velocity - np.median(velocity, axis=0)
-        for i in suspect:
-            if len(group) < 2 or not _core_vector(points, velocity, neighbours[i], int(i)):
-                found += [int(component[i]) for component in group]
-    return np.array(sorted(found), dtype=np.intp)
+def _flat_trend(points: FloatArray, velocity: FloatArray, neighbours: NDArray[np.intp]) -> Trend:
+    """Value on the plane through the neighbours, and their distances from that plane."""
+    arm = points[neighbours] - points[:, None, :]
+    arm = arm / np.abs(arm).max()
+    design = np.concatenate([np.ones((*neighbours.shape, 1)), arm], axis=2)
+    v = velocity[neighbours]
+    fitted = np.einsum("nij,nj->ni", np.linalg.pinv(design), v)
+    return fitted[:, 0], np.abs(v - np.einsum("nji,ni->nj", design, fitted))
 
 
 def _nearest(points: FloatArray, number: int) -> NDArray[np.intp]:
@@ -199,13 +229,14 @@ def _nearest(points: FloatArray, number: int) -> NDArray[np.intp]:
     return np.asarray(near[~own].reshape(len(points), number))
 
 
-def _plane_ratio(survey: Survey, component: NDArray[np.intp], neighbours: NDArray[np.intp]) -> FloatArray:
-    velocity = survey.velocity[component]
-    residual = velocity - np.median(velocity[neighbours], axis=1)
-    noise = np.full(component.size, 1.4826 * np.median(np.abs(residual)))
-    if survey.uncertainty is not None:
-        noise = np.maximum(noise, survey.uncertainty[component])
-    return _normalised(velocity, neighbours, noise)
+def _lone_core_station(velocity: FloatArray, index: int) -> bool:
+    """Whether a station stands alone in an unresolved core: its neighbours turn sign and fall off on both sides."""
+    if not 2 <= index < velocity.size - 2:
+        return False
+    level = np.median(velocity)
+    far_left, left, own, right, far_right = velocity[index - 2 : index + 3] - level
+    falls_off = abs(left) > abs(far_left) and abs(right) > abs(far_right)
+    return bool(left * right < 0.0 and falls_off and abs(own) < _UNRESOLVED * max(abs(left), abs(right)))
 
 
 def _core_vector(points: FloatArray, velocity: FloatArray, neighbours: NDArray[np.intp], index: int) -> bool:
