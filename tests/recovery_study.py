@@ -13,10 +13,10 @@ import warnings
 from dataclasses import dataclass
 
 import numpy as np
+from vortexwidgets.uncertainty import Estimate
 
 import vortexwidgets as vx
 from vortexwidgets.core_pressure import combined_drop
-from vortexwidgets.uncertainty import Estimate
 
 CORE_RADIUS = 0.012
 TRUTHS = {
@@ -116,7 +116,9 @@ def outsider_truth():
     _, swirl = outsider(np.random.default_rng(0))
     radii = np.linspace(0.1, 5.0, 4000) * CORE_RADIUS
     far = 400.0 * CORE_RADIUS
-    inner = quad(lambda t: float(swirl(np.exp(t)) ** 2), math.log(1e-7), math.log(far), limit=400, epsabs=0, epsrel=1e-10)[0]
+    inner = quad(
+        lambda t: float(swirl(np.exp(t)) ** 2), math.log(1e-7), math.log(far), limit=400, epsabs=0, epsrel=1e-10
+    )[0]
     return float(np.max(swirl(radii))), inner + float(swirl(far)) ** 2 / 2.0
 
 
@@ -159,7 +161,10 @@ def main(runs):
     for number, key in enumerate(TRUTHS):
         for noise in NOISE:
             shares = known_model_cell(key, noise, runs, number)
-            print(f"| {key} | {100 * noise:g} | " + " | ".join(f"{100 * share:.1f} %" for share in shares) + " |", flush=True)
+            print(
+                f"| {key} | {100 * noise:g} | " + " | ".join(f"{100 * share:.1f} %" for share in shares) + " |",
+                flush=True,
+            )
     print("\n## The model is not told: all models ranked, the rejected ones dropped, the rest weighted\n")
     print("| truth | noise, % of peak | core pressure drop | answered |\n|---|---|---|---|")
     for number, key in enumerate([*TRUTHS, "outside"]):

@@ -4,10 +4,10 @@ import math
 
 import numpy as np
 import pytest
+from vortexwidgets.uncertainty import Estimate
 
 import vortexwidgets as vx
 from vortexwidgets.core_pressure import combined_drop, core_pressure_of, data_drop, mean_swirl
-from vortexwidgets.uncertainty import Estimate
 
 UNIT = vx.Vortex("lamb-oseen", circulation=2 * math.pi, core_radius=1.0)
 
@@ -113,7 +113,9 @@ def test_noise_does_not_bias_the_data_only_drop():
     for seed in range(200):
         noisy = survey(noise=0.15, seed=seed)
         fit = vx.fit_survey(noisy, "lamb-oseen")
-        drops.append(data_drop(noisy, fit, density=Estimate(1.0, 0.0), model_drop=fit.core_pressure_drop(1.0)).estimate.value)
+        drops.append(
+            data_drop(noisy, fit, density=Estimate(1.0, 0.0), model_drop=fit.core_pressure_drop(1.0)).estimate.value
+        )
     assert np.mean(drops) == pytest.approx(math.log(2), rel=0.05)
 
 

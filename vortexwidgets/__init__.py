@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import importlib
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 # Public name -> the module that holds it. Nothing is imported before it is used.
 _HOMES = {
@@ -39,7 +39,7 @@ _HOMES = {
     "AppraisalPanel": "vortexwidgets.widgets.appraisal_panel",
 }
 
-__all__ = ["__version__", *_HOMES]  # noqa: PLE0604  (the names are strings)
+__all__ = ["__version__", *_HOMES]
 
 
 def __getattr__(name: str) -> Any:

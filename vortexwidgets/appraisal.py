@@ -165,7 +165,9 @@ class Appraisal:
             ]
             for row in self.models
         ]
-        lines.append(table(body, ["model", "AICc above best", "weight", "by the data", "core radius", "core pressure drop"]))
+        lines.append(
+            table(body, ["model", "AICc above best", "weight", "by the data", "core radius", "core pressure drop"])
+        )
         lines += ["", "Core pressure: " + self._pressure_line()]
         lines += [f"  {drop.name}: {drop.estimate}" for drop in self.core_drops]
         lines += ["", "Consequences:"]
@@ -220,7 +222,9 @@ def load_appraisal(path: str | Path) -> Appraisal:
 
 def _checked(value: Any) -> Appraisal:
     if not isinstance(value, Appraisal):
-        raise ValueError(f"The record holds a {type(value).__name__}, not an appraisal; save one with appraisal.save('record.json').")
+        raise ValueError(
+            f"The record holds a {type(value).__name__}, not an appraisal; save one with appraisal.save('record.json')."
+        )
     return value
 
 
@@ -310,7 +314,9 @@ def appraise(
     else:
         drop, envelope = combined_drop(supported, density=fluid.density, gain=survey.velocity_gain, beyond=limit)
     if missed and drop.bound is None:
-        drop = Estimate(drop.value, drop.uncertainty, drop.quantity, budget=drop.budget, quantiles=drop.quantiles, bound="lower")
+        drop = Estimate(
+            drop.value, drop.uncertainty, drop.quantity, budget=drop.budget, quantiles=drop.quantiles, bound="lower"
+        )
     from_station = site.reference_radius is None and limit is not None
     gas = fluid.heat_capacity_ratio
     pressure = None
@@ -400,7 +406,9 @@ def _fluid_of(survey: Survey, assumptions: list[str]) -> Fluid:
         name = "water"
         assumptions.append("The fluid was not stated: water is taken. Pressures scale with density; give the fluid.")
     if temperature is None:
-        assumptions.append(f"The temperature was not stated: 15 ± 5 °C is taken for the {name}, with its doubt carried.")
+        assumptions.append(
+            f"The temperature was not stated: 15 ± 5 °C is taken for the {name}, with its doubt carried."
+        )
     pressure = facts.get("ambient_pressure", facts.get("surface_pressure"))
     if pressure is not None:
         options["pressure"] = pressure
@@ -457,7 +465,9 @@ def _survey_cautions(survey: Survey, ranking: Ranking, *, missed: bool) -> list[
         cautions.append(text)
     if survey.geometry == "traverse" and best.fit.background == "none":
         try:
-            wider = fit_survey(survey, best.model, background="uniform", uncertainties=best.fit.uncertainties, on_failure="return")
+            wider = fit_survey(
+                survey, best.model, background="uniform", uncertainties=best.fit.uncertainties, on_failure="return"
+            )
         except (ValueError, FitError):
             wider = None
         unit = best.fit.scatter**2 if best.fit.uncertainties == "relative" else 1.0
@@ -478,11 +488,15 @@ def _assumptions(survey: Survey, settings: Settings, instrument: Instrument | No
     if instrument is None or instrument.wander == 0.0:
         sentences.append("The vortex did not wander while it was measured; fluctuation is not included.")
     else:
-        sentences.append(f"The vortex wandered with a standard deviation of {format_number(instrument.wander, 'm')} along each axis.")
+        sentences.append(
+            f"The vortex wandered with a standard deviation of {format_number(instrument.wander, 'm')} along each axis."
+        )
     if instrument is None or instrument.probe_width == 0.0:
         sentences.append("The probe is small beside the core.")
     else:
-        sentences.append(f"The probe averages over {format_number(instrument.probe_width, 'm')} ({instrument.averaging}).")
+        sentences.append(
+            f"The probe averages over {format_number(instrument.probe_width, 'm')} ({instrument.averaging})."
+        )
     background = {"none": "No background flow is fitted.", "uniform": "A uniform background flow is fitted.",
                   "linear": "A background flow with a constant gradient is fitted."}  # fmt: skip
     sentences.append(background[settings.background])
@@ -513,7 +527,11 @@ def _model_rows(ranking: Ranking, fluid: Fluid) -> tuple[ModelRow, ...]:
                 status=fit.status,
                 chi_square=fit.chi_square,
                 degrees_of_freedom=fit.degrees_of_freedom,
-                parameters={**fit.parameters, "peak_radius": fit.estimate("peak_radius"), "peak_swirl": fit.estimate("peak_swirl")},
+                parameters={
+                    **fit.parameters,
+                    "peak_radius": fit.estimate("peak_radius"),
+                    "peak_swirl": fit.estimate("peak_swirl"),
+                },
                 drop=drop,
                 pressure_constant=fit.model.pressure_constant(*shape) if all(map(math.isfinite, shape)) else math.nan,
             )

@@ -211,7 +211,9 @@ def combined_drop(
     """
     drops = [row.fit.core_pressure_drop(density.value) for row in rows]
     if beyond is not None:
-        drops = [_scaled(drop, 1.0 - share_beyond(row.fit.vortex, beyond)) for drop, row in zip(drops, rows, strict=True)]
+        drops = [
+            _scaled(drop, 1.0 - share_beyond(row.fit.vortex, beyond)) for drop, row in zip(drops, rows, strict=True)
+        ]
     bounds = [drop for drop in drops if drop.bound is not None]
     if bounds:
         # One profile that leaves the core open leaves the answer open: the shallowest of all lower limits stands.
@@ -310,11 +312,15 @@ def core_pressure_of(drop: Estimate, ambient: Estimate, *, heat_capacity_ratio: 
     if drop.bound is not None or not math.isfinite(drop.uncertainty):
         return Estimate(value, math.nan, "core_pressure", bound="upper" if drop.bound else None)
     step = max(1e-4 * drop.value, 1e-9)
-    slope = abs(float(pressure(ambient.value, drop.value + step) - pressure(ambient.value, drop.value - step))) / (2 * step)
+    slope = abs(float(pressure(ambient.value, drop.value + step) - pressure(ambient.value, drop.value - step))) / (
+        2 * step
+    )
     reference = ambient.uncertainty
     if heat_capacity_ratio is not None:
         d = 1e-4 * ambient.value
-        reference *= abs(float(pressure(ambient.value + d, drop.value) - pressure(ambient.value - d, drop.value))) / (2 * d)
+        reference *= abs(float(pressure(ambient.value + d, drop.value) - pressure(ambient.value - d, drop.value))) / (
+            2 * d
+        )
     budget = tuple(Contribution(part.name, part.uncertainty * slope) for part in drop.budget)
     budget += (Contribution("reference pressure", reference),)
     generator = np.random.default_rng(_SEED)
@@ -335,7 +341,7 @@ def circulation_at(fit: Fit, radius: float) -> Estimate:
 
     vortex = fit.vortex
     value = float(vortex.enclosed_circulation(radius))
-    names = [name for name in fit.names if name == "core_radius" or hasattr(vortex, name) and name != "centre"]
+    names = [name for name in fit.names if name == "core_radius" or (hasattr(vortex, name) and name != "centre")]
     names = [name for name in fit.names if name in (fit._problem.strength_name, "core_radius", *vortex.shape)]
     gradient = np.zeros(len(fit.names))
     for name in names:
@@ -444,11 +450,11 @@ def _swirl_of_samples(survey: Survey, fit: Fit) -> tuple[FloatArray, FloatArray,
     radius = np.hypot(dx, dy)
     with np.errstate(invalid="ignore", divide="ignore"):
         seen = (dx * direction[:, 1] - dy * direction[:, 0]) / radius
-    velocity = problem.target.copy()
-    if len(problem.background):
-        velocity -= fit._solution.linear[1:] @ problem.background
-    velocity *= problem.uncertainty
-    noise = problem.uncertainty * (fit.scatter if fit.uncertainties == "relative" else 1.0)
+    velocity = problem.samples.target.copy()
+    if len(problem.samples.background):
+        velocity -= fit._solution.linear[1:] @ problem.samples.background
+    velocity *= problem.samples.uncertainty
+    noise = problem.samples.uncertainty * (fit.scatter if fit.uncertainties == "relative" else 1.0)
     good = np.abs(np.nan_to_num(seen)) > 0.5
     return radius[good], velocity[good] / seen[good], noise[good] / np.abs(seen[good])
 

@@ -5,9 +5,9 @@ import dataclasses
 import numpy as np
 import pytest
 from scipy.optimize import curve_fit, minimize
+from vortexwidgets.models.catalogue import MODELS
 
 import vortexwidgets as vx
-from vortexwidgets.models.catalogue import MODELS
 
 FITTED = [key for key, model in MODELS.items() if model.ranked]
 
@@ -105,7 +105,9 @@ def test_values_and_uncertainties_equal_those_of_an_independent_optimiser(key):
     assert [fit.uncertainty(name) for name in names] == pytest.approx(np.sqrt(np.diag(covariance)), rel=1e-6)
 
 
-@pytest.mark.parametrize("name", ["circulation", "core_radius", "exponent", "centre_x", "peak_swirl", "core_pressure_drop"])
+@pytest.mark.parametrize(
+    "name", ["circulation", "core_radius", "exponent", "centre_x", "peak_swirl", "core_pressure_drop"]
+)
 def test_profile_limits_equal_a_brute_force_profile(name):
     """The limit is where the smallest chi-square at a held quantity has risen by 1.96²; found here by a simplex."""
     vortex = truth("vatistas")
@@ -113,7 +115,9 @@ def test_profile_limits_equal_a_brute_force_profile(name):
     fit = vx.fit_survey(survey, "vatistas")
 
     def built(p):
-        return vx.Vortex("vatistas", circulation=p[0], core_radius=np.exp(p[1]), exponent=np.exp(p[2]), centre=(p[3], p[4]))
+        return vx.Vortex(
+            "vatistas", circulation=p[0], core_radius=np.exp(p[1]), exponent=np.exp(p[2]), centre=(p[3], p[4])
+        )
 
     def chi_square(p):
         u, v = built(p).velocity(survey.x, survey.y)
@@ -137,8 +141,15 @@ def test_profile_limits_equal_a_brute_force_profile(name):
         def penalised(p, edge=edge, stiffness=stiffness):
             return chi_square(p) + stiffness * (quantity(p) - edge) ** 2
 
-        found = minimize(penalised, best, method="Nelder-Mead", options={"maxiter": 20000, "xatol": 1e-9, "fatol": 1e-9, "adaptive": True})
-        found = minimize(penalised, found.x, method="Nelder-Mead", options={"maxiter": 20000, "xatol": 1e-10, "fatol": 1e-10})
+        found = minimize(
+            penalised,
+            best,
+            method="Nelder-Mead",
+            options={"maxiter": 20000, "xatol": 1e-9, "fatol": 1e-9, "adaptive": True},
+        )
+        found = minimize(
+            penalised, found.x, method="Nelder-Mead", options={"maxiter": 20000, "xatol": 1e-10, "fatol": 1e-10}
+        )
         slip = stiffness * (quantity(found.x) - edge) ** 2
         assert chi_square(found.x) - fit.chi_square + 2 * slip == pytest.approx(1.959964**2, rel=0.02)
 
@@ -156,7 +167,10 @@ def test_order_and_direction_of_the_traverse_do_not_matter():
     survey = line(truth("lamb-oseen"), noise=0.3)
     shuffled = np.random.default_rng(0).permutation(60)
     again = vx.Survey.traverse(
-        position=survey.x[:60][shuffled], velocity=survey.velocity[:60][shuffled], along=survey.velocity[60:][shuffled], uncertainty=0.1
+        position=survey.x[:60][shuffled],
+        velocity=survey.velocity[:60][shuffled],
+        along=survey.velocity[60:][shuffled],
+        uncertainty=0.1,
     )
     one, two = vx.fit_survey(survey, "lamb-oseen"), vx.fit_survey(again, "lamb-oseen")
     assert two.values == pytest.approx(one.values, rel=1e-9)
@@ -164,7 +178,9 @@ def test_order_and_direction_of_the_traverse_do_not_matter():
 
 def test_a_robust_loss_survives_spikes():
     survey = line(truth("lamb-oseen"), noise=0.1)
-    spiked = dataclasses.replace(survey, velocity=np.where(np.arange(survey.velocity.size) % 17 == 3, 40.0, survey.velocity))
+    spiked = dataclasses.replace(
+        survey, velocity=np.where(np.arange(survey.velocity.size) % 17 == 3, 40.0, survey.velocity)
+    )
     plain = vx.fit_survey(spiked, "lamb-oseen", on_failure="return")
     for loss in ("huber", "soft_l1"):
         robust = vx.fit_survey(spiked, "lamb-oseen", loss=loss)
@@ -187,7 +203,9 @@ def test_an_unnoticed_miss_is_a_shallower_vortex():
     """Lamb-Oseen missed by half a core radius comes out 16 % too shallow (derived, quadrature at 50 digits)."""
     vortex = vx.Vortex("lamb-oseen", circulation=2 * np.pi, core_radius=1.0, centre=(0.0, 0.5))
     position = np.linspace(-6.0, 6.0, 121)
-    survey = vx.Survey.traverse(position=position, velocity=vortex.velocity(position, np.zeros(121))[1], uncertainty=0.01)
+    survey = vx.Survey.traverse(
+        position=position, velocity=vortex.velocity(position, np.zeros(121))[1], uncertainty=0.01
+    )
     fit = vx.fit_survey(survey, "lamb-oseen", on_failure="return")
     assert fit.core_pressure_drop(1.0).value / vortex.pressure_drop(0.0, density=1.0) == pytest.approx(0.84, abs=0.01)
 

@@ -104,6 +104,8 @@ def test_refusals():
         vx.rank_models(survey, [])
     with pytest.raises(KeyError, match="Ranked: lamb-oseen"):
         vx.rank_models(survey, ["lamb-oseen"])["taylor"]
-    noise = vx.Survey.radial(radius=np.linspace(0.1, 1, 40), swirl=np.random.default_rng(0).normal(size=40), uncertainty=1.0)
+    noise = vx.Survey.radial(
+        radius=np.linspace(0.1, 1, 40), swirl=np.random.default_rng(0).normal(size=40), uncertainty=1.0
+    )
     with pytest.raises(vx.FitError, match="No vortex is seen"):
         vx.rank_models(noise)

@@ -17,7 +17,7 @@ from vortexwidgets.fitting.problem import (
     SHAPE,
     Background,
     Problem,
-    build_problem,
+    lay_out,
 )
 from vortexwidgets.fitting.result import Fit, FitError, Loss, Status, Uncertainties
 from vortexwidgets.fitting.separable import Solution, misfit, solve
@@ -136,13 +136,7 @@ def fit_survey(
 
 def problem_for(survey: Survey, model: VortexModel, settings: Settings) -> Problem:
     """Lay out a survey for a model under given settings."""
-    return build_problem(
-        survey,
-        model,
-        instrument=settings.instrument,
-        background=settings.background,
-        weighted=survey.uncertainty is not None,
-    )
+    return Problem(lay_out(survey, instrument=settings.instrument, background=settings.background), model)
 
 
 def free_parameters(
@@ -176,8 +170,8 @@ def fit_problem(
     held: Mapping[int, float] | None = None,
 ) -> Fit:
     """Fit from one or several starts and keep the lowest minimum."""
-    samples = len(problem.target) + (problem.prior is not None)
-    number = 1 + len(problem.background) + len(free)
+    samples = len(problem.samples.target) + (problem.samples.prior is not None)
+    number = 1 + len(problem.samples.background) + len(free)
     if samples < number:
         raise ValueError(
             f"Survey has {samples} points but {problem.model.name} has {number} free parameters here; "
@@ -185,7 +179,9 @@ def fit_problem(
         )
     solution = _lowest([solve(problem, start, free) for start in starts])
     if len(starts) > 1 and (
-        not solution.converged or settings.uncertainties == "relative" or solution.chi_square > 2.0 * max(samples - number, 1)
+        not solution.converged
+        or settings.uncertainties == "relative"
+        or solution.chi_square > 2.0 * max(samples - number, 1)
     ):
         # Nothing says that this is the lowest minimum: look about more widely before believing it.
         solution = _lowest([solution, *(solve(problem, start, free) for start in _wider(problem, free, starts))])
@@ -256,20 +252,20 @@ def _refuse_failure(fit: Fit) -> None:
             fit,
         )
     # Only a weak drop of chi-square is worth the question whether there is a vortex at all.
-    if float(fit._problem.target @ fit._problem.target) < 10.0 * fit.chi_square + 1e3 and not fit._is_seen:
+    if fit._problem.samples.power < 10.0 * fit.chi_square + 1e3 and not fit._is_seen:
         raise FitError(Status.NO_VORTEX.value + " Check the sign, the units and the centre, or measure closer.", fit)
 
 
 def _names(problem: Problem, free: tuple[int, ...]) -> tuple[str, ...]:
     labels = ("centre_x", "centre_y", "core_radius", *(parameter.name for parameter in problem.model.shape))
-    return (problem.strength_name, *problem.background_names, *(labels[index] for index in free))
+    return (problem.strength_name, *problem.samples.background_names, *(labels[index] for index in free))
 
 
 def _starts(
     problem: Problem, free: tuple[int, ...], held: Mapping[int, float], given: Mapping[str, float]
 ) -> list[list[float]]:
     names = ["centre_x", "centre_y", "core_radius", *(parameter.name for parameter in problem.model.shape)]
-    linear = (problem.strength_name, *problem.background_names)
+    linear = (problem.strength_name, *problem.samples.background_names)
     unknown = [name for name in given if name not in names and name not in linear]
     if unknown:
         raise ValueError(f"No parameter {unknown[0]!r} to start from. Known: {', '.join(names)}.")
@@ -296,8 +292,10 @@ def _robust(problem: Problem, settings: Settings, solution: Solution) -> tuple[P
         if settings.uncertainties == "relative":
             scale = 1.4826 * float(np.median(np.abs(residual))) or 1.0
         z = np.abs(residual) / scale
-        weight = np.minimum(1.0, 1.345 / np.maximum(z, 1e-300)) if settings.loss == "huber" else 1.0 / np.sqrt(1.0 + z * z)
-        problem = original.reweighted(np.sqrt(weight))
+        weight = (
+            np.minimum(1.0, 1.345 / np.maximum(z, 1e-300)) if settings.loss == "huber" else 1.0 / np.sqrt(1.0 + z * z)
+        )
+        problem = replace(original, samples=original.samples.reweighted(np.sqrt(weight)))
         before = solution
         solution = solve(problem, before.nonlinear, before.free)
         move = np.abs(np.subtract(solution.nonlinear, before.nonlinear)) / solution.nonlinear[CORE_RADIUS]

@@ -135,7 +135,7 @@ def of_swirl_scale(
 
 
 def _log_slope(measure: Callable[..., float], shape: list[float], which: int) -> float:
-    """d ln m / d ln (shape parameter), by a central difference."""
+    """D ln m / d ln (shape parameter), by a central difference."""
     h = 1e-5
     up, down = list(shape), list(shape)
     up[which] *= 1.0 + h
@@ -145,8 +145,8 @@ def _log_slope(measure: Callable[..., float], shape: list[float], which: int) ->
 
 def null_chi_square(problem: Problem) -> float:
     """Chi-square of the background alone, without any vortex."""
-    if len(problem.background) == 0:
-        return float(problem.target @ problem.target)
-    level = np.linalg.lstsq(problem.background.T, problem.target, rcond=None)[0]
-    rest = problem.target - level @ problem.background
+    if len(problem.samples.background) == 0:
+        return float(problem.samples.target @ problem.samples.target)
+    level = np.linalg.lstsq(problem.samples.background.T, problem.samples.target, rcond=None)[0]
+    rest = problem.samples.target - level @ problem.samples.background
     return float(rest @ rest)

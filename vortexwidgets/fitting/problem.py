@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -23,17 +24,10 @@ CENTRE_X, CENTRE_Y, CORE_RADIUS, SHAPE = 0, 1, 2, 3
 _NEAR_ZERO = 1e-120  # keeps r > 0, so that the response at the centre is its limit and not 0/0
 
 
-@dataclass(frozen=True, eq=False)
-class Problem:
-    """Samples, weights and model; every array is already divided by the standard uncertainty of its sample.
+@dataclass(frozen=True, eq=False, slots=True)
+class Samples:
+    """The included in-plane samples of a survey, laid out for fitting; divided by their standard uncertainties."""
 
-    The samples measure a component of the in-plane velocity, v = swirl_scale * f(position) + background. `f` depends on the
-    nonlinear parameters (centre_x, centre_y, core_radius, shape...); swirl scale and background enter linearly. A model
-    whose strength is its circulation has swirl_scale = circulation / (2π core_radius).
-    """
-
-    model: VortexModel
-    kernel: Callable[..., tuple[FloatArray, ...]]  # the model's fit kernel
     x: FloatArray  # (N,) or (N, K) with K displacements of the instrument [m]
     y: FloatArray | None  # None: all zero, as on a traverse
     toward_x: FloatArray | None  # (N,) or (N, 1): measured direction over its uncertainty [s/m]; None: all zero
@@ -44,14 +38,8 @@ class Problem:
     weights: FloatArray | None  # (K,) of the instrument's displacements
     background: FloatArray  # (B, N) columns
     background_names: tuple[str, ...]
-    by_circulation: bool
     is_flat: bool  # a line that measures across itself, positive to its left
     prior: tuple[int, float, float] | None  # nonlinear parameter, value, standard uncertainty
-
-    @property
-    def strength_name(self) -> str:
-        """Name of the linear strength parameter."""
-        return "circulation" if self.by_circulation else "swirl_scale"
 
     @property
     def position(self) -> tuple[FloatArray, FloatArray]:
@@ -67,30 +55,73 @@ class Problem:
         toward_y = np.ravel(self.toward_y)
         return np.zeros_like(toward_y) if self.toward_x is None else np.ravel(self.toward_x), toward_y
 
+    def reweighted(self, factor: FloatArray) -> Samples:
+        """The same samples with each row multiplied by a factor, shape (N,)."""
+        row = factor if self.weights is None else factor[:, None]
+        target = self.target * factor
+        return replace(
+            self,
+            toward_x=None if self.toward_x is None else self.toward_x * row,
+            toward_y=self.toward_y * row,
+            target=target,
+            power=float(target @ target),
+            uncertainty=self.uncertainty / factor,
+            background=self.background * factor,
+        )
+
+
+@dataclass(frozen=True, eq=False)
+class Problem:
+    """Samples and a model as one least-squares problem.
+
+    A sample measures a component of the in-plane velocity, v = swirl_scale * f(position) + background. `f` depends on the
+    nonlinear parameters (centre_x, centre_y, core_radius, shape...); swirl scale and background enter linearly. A model
+    whose strength is its circulation has swirl_scale = circulation / (2π core_radius).
+    """
+
+    samples: Samples
+    model: VortexModel
+
+    @cached_property
+    def kernel(self) -> Callable[..., tuple[FloatArray, ...]]:
+        """The model's compiled (F, W, dF/dshape...)."""
+        return self.model.fit_kernel()
+
+    @property
+    def by_circulation(self) -> bool:
+        """Whether the strength is a circulation."""
+        return self.model.strength == "circulation"
+
+    @property
+    def strength_name(self) -> str:
+        """Name of the linear strength parameter."""
+        return "circulation" if self.by_circulation else "swirl_scale"
+
     def columns(self, nonlinear: list[float], free: tuple[int, ...]) -> tuple[FloatArray, list[FloatArray]]:
         """Response to a unit swirl scale and its derivatives by the free nonlinear parameters.
 
         The derivatives are by relative change: of a length per core radius, of a shape parameter per itself, so that
         every column has the size of the response.
         """
-        if self.is_flat and nonlinear[CENTRE_Y] == 0.0:
+        samples = self.samples
+        if samples.is_flat and nonlinear[CENTRE_Y] == 0.0:
             return self._flat_columns(nonlinear, free)
         centre_x, centre_y, core_radius, *shape = nonlinear
-        dx = self.x - centre_x
+        dx = samples.x - centre_x
         r2 = dx * dx
-        if self.y is None:
+        if samples.y is None:
             dy: FloatArray | float = -centre_y
             r2 += centre_y * centre_y + _NEAR_ZERO
         else:
-            dy = self.y - centre_y
+            dy = samples.y - centre_y
             r2 += dy * dy
             r2 += _NEAR_ZERO
         r = np.sqrt(r2)
         x = r / core_radius
         swirl, vorticity, *by_shape = self.kernel(x, *shape)
-        across = dx * self.toward_y
-        if self.toward_x is not None:
-            across -= dy * self.toward_x
+        across = dx * samples.toward_y
+        if samples.toward_x is not None:
+            across -= dy * samples.toward_x
         across /= r  # unit swirl direction on the measured one
         response = swirl * across
         xw = x * vorticity
@@ -104,28 +135,29 @@ class Problem:
                     slope = (2.0 * swirl - xw) * across / r2
                     turn = swirl / r
                 if index == CENTRE_X:
-                    column = slope * dx - turn * self.toward_y
-                elif self.toward_x is None:
+                    column = slope * dx - turn * samples.toward_y
+                elif samples.toward_x is None:
                     column = slope * dy
                 else:
-                    column = slope * dy + turn * self.toward_x
+                    column = slope * dy + turn * samples.toward_x
                 column *= core_radius
             else:
                 column = (nonlinear[index] * by_shape[index - SHAPE]) * across
             derivatives.append(column)
-        if self.weights is not None:
-            response = response @ self.weights
-            derivatives = [column @ self.weights for column in derivatives]
+        if samples.weights is not None:
+            response = response @ samples.weights
+            derivatives = [column @ samples.weights for column in derivatives]
         return response, derivatives
 
     def _flat_columns(self, nonlinear: list[float], free: tuple[int, ...]) -> tuple[FloatArray, list[FloatArray]]:
         """The same on a line through the axis that measures across itself, where most of the geometry falls away."""
-        dx = self.x - nonlinear[CENTRE_X]
+        samples = self.samples
+        dx = samples.x - nonlinear[CENTRE_X]
         x = np.abs(dx)
         x += _NEAR_ZERO
         x /= nonlinear[CORE_RADIUS]
         swirl, vorticity, *by_shape = self.kernel(x, *nonlinear[SHAPE:])
-        across = np.copysign(self.toward_y, dx)
+        across = np.copysign(samples.toward_y, dx)
         response = swirl * across
         slope = swirl - x * vorticity
         derivatives = []
@@ -134,7 +166,7 @@ class Problem:
                 column = slope * across
             elif index == CENTRE_X:
                 column = slope / x
-                column *= self.toward_y
+                column *= samples.toward_y
             elif index == CENTRE_Y:
                 column = np.zeros_like(x)
             else:
@@ -142,61 +174,40 @@ class Problem:
             derivatives.append(column)
         return response, derivatives
 
-    def reweighted(self, factor: FloatArray) -> Problem:
-        """The same problem with each row multiplied by a factor, shape (N,)."""
-        row = factor if self.weights is None else factor[:, None]
-        return replace(
-            self,
-            toward_x=None if self.toward_x is None else self.toward_x * row,
-            toward_y=self.toward_y * row,
-            target=self.target * factor,
-            power=float(np.sum((self.target * factor) ** 2)),
-            uncertainty=self.uncertainty / factor,
-            background=self.background * factor,
-        )
 
-    def for_model(self, model: VortexModel) -> Problem:
-        """The same samples with another model."""
-        return replace(self, model=model, kernel=model.fit_kernel(), by_circulation=model.strength == "circulation")
+def lay_out(survey: Survey, *, instrument: Instrument | None = None, background: Background = "none") -> Samples:
+    """Lay out a survey for fitting, once: a survey never changes, so the layout is kept with it."""
+    store: dict[object, Samples] = survey.__dict__.setdefault("_layouts", {})
+    key = (instrument, background)
+    if key not in store:
+        store[key] = _laid_out(survey, instrument, background)
+    return store[key]
 
 
-def build_problem(
-    survey: Survey,
-    model: VortexModel,
-    *,
-    instrument: Instrument | None = None,
-    background: Background = "none",
-    weighted: bool = True,
-) -> Problem:
-    """Lay out the included in-plane samples of a survey for a model."""
-    direction_x, direction_y = survey.direction[:, 0], survey.direction[:, 1]
-    x, y, velocity = survey.x, survey.y, survey.velocity
-    uncertainty = survey.uncertainty if weighted else None
+def _laid_out(survey: Survey, instrument: Instrument | None, background: Background) -> Samples:
     chosen = survey.in_plane
-    if not chosen.all():
-        direction_x, direction_y, x, y, velocity = (a[chosen] for a in (direction_x, direction_y, x, y, velocity))
-        uncertainty = None if uncertainty is None else uncertainty[chosen]
-    if uncertainty is None:
+    x, y, velocity = survey.x[chosen], survey.y[chosen], survey.velocity[chosen]
+    if survey.uncertainty is not None:
+        uncertainty = survey.uncertainty[chosen]
+    else:
         uncertainty = np.ones_like(velocity)
-    toward_x, toward_y = direction_x / uncertainty, direction_y / uncertainty
+    toward_x, toward_y = survey.direction[chosen, 0] / uncertainty, survey.direction[chosen, 1] / uncertainty
     names, columns = _background_columns(background, x, y, toward_x, toward_y)
-    slanted = bool(toward_x.any())
+    on_line, across = not y.any(), not toward_x.any()
     weights = None
     if instrument is not None and not instrument.is_ideal:
         shift_x, shift_y, weights = instrument.rule
         x, y = np.add.outer(x, shift_x), np.add.outer(y, shift_y)
         toward_x, toward_y = toward_x[:, None], toward_y[:, None]
-    target = velocity / uncertainty
-    off_line = bool(y.any())
+        on_line = False
     prior = None
     if survey.miss_distance is not None and survey.miss_distance.uncertainty > 0.0:
         prior = (CENTRE_Y, survey.miss_distance.value, survey.miss_distance.uncertainty)
-    return Problem(
-        model=model,
-        kernel=model.fit_kernel(),
+    target = velocity / uncertainty
+    return Samples(
         x=x,
-        y=y if off_line else None,
-        toward_x=toward_x if slanted else None,
+        y=None if on_line else y,
+        toward_x=None if across else toward_x,
         toward_y=toward_y,
         target=target,
         power=float(target @ target),
@@ -204,14 +215,9 @@ def build_problem(
         weights=weights,
         background=columns,
         background_names=names,
-        by_circulation=model.strength == "circulation",
-        is_flat=weights is None and not off_line and not slanted and bool((toward_y > 0.0).all()),
+        is_flat=on_line and across and bool((toward_y > 0.0).all()),
         prior=prior,
     )
-
-
-_UNIFORM = ("background_x", "background_y")
-_GRADIENTS = ("gradient_xx", "gradient_xy", "gradient_yx", "gradient_yy")
 
 
 def _background_columns(

@@ -156,7 +156,9 @@ def rank_models(
     if not kept:
         raise FitError("No model could be fitted. " + " ".join(failures))
     if not any(fit._is_seen for _, _, fit in kept):
-        raise FitError(Status.NO_VORTEX.value + " Check the sign, the units and the centre, or measure closer.", kept[0][2])
+        raise FitError(
+            Status.NO_VORTEX.value + " Check the sign, the units and the centre, or measure closer.", kept[0][2]
+        )
     known = settings.uncertainties == "absolute"
     criteria = np.array([_aicc(fit, known=known) for _, _, fit in kept])
     criteria -= criteria.min()
@@ -205,7 +207,7 @@ def _fits(
     for model in models:
         names = ("centre_x", "centre_y", "core_radius", *(parameter.name for parameter in model.shape))
         free, held = free_parameters(survey, model, {n: v for n, v in fixed.items() if n in names})
-        problem = first.for_model(model)
+        problem = problem_for(survey, model, settings)
         try:
             fit = fit_problem(problem, settings, free, starts_for(problem, free, found, held), on_failure="return")
         except ValueError as error:
@@ -288,6 +290,6 @@ def _repeats(survey: Survey, fit: Fit) -> tuple[float, int]:
     _, group = np.unique(keys, axis=0, return_inverse=True)
     group = np.ravel(group)
     count = np.bincount(group)
-    target = fit._problem.target
+    target = fit._problem.samples.target
     mean = np.bincount(group, weights=target) / count
     return float(np.sum((target - mean[group]) ** 2)), int(np.sum(count - 1))

@@ -164,7 +164,7 @@ class Fit:
         if not self._is_seen:
             return dict.fromkeys(self.names, Status.NO_VORTEX.value)
         found: dict[str, str] = {}
-        first = 1 + len(self._problem.background)
+        first = 1 + len(self._problem.samples.background)
         relative = self._linear_covariance.diagonal().tolist()
         for position, index in enumerate(self._solution.free, first):
             if index < CORE_RADIUS or 0.0 <= relative[position] < _SUSPECT**2:
@@ -305,7 +305,7 @@ class Fit:
         """
         low, high = self._limits_of("core_pressure_drop", 0.95)
         constant = self.model.centre_pressure(*self._shape)
-        if self.undetermined and not math.isfinite(high) or math.isnan(self._swirl_scale):
+        if (self.undetermined and not math.isfinite(high)) or math.isnan(self._swirl_scale):
             return Estimate(density * low, math.nan, "core_pressure_drop", bound="lower")
         value = density * self._swirl_scale**2 * constant
         relative = self._log_uncertainty("core_pressure_drop")
@@ -352,12 +352,12 @@ class Fit:
     @cached_property
     def fitted(self) -> FloatArray:
         """Fitted velocity at the included in-plane samples, background and instrument included, shape (N,). [m/s]"""
-        return np.asarray((self._problem.target - self._solution.residuals) * self._problem.uncertainty)
+        return np.asarray((self._problem.samples.target - self._solution.residuals) * self._problem.samples.uncertainty)
 
     @cached_property
     def residuals(self) -> FloatArray:
         """Measured less fitted velocity, shape (N,). [m/s]"""
-        return np.asarray(self._solution.residuals * self._problem.uncertainty)
+        return np.asarray(self._solution.residuals * self._problem.samples.uncertainty)
 
     @cached_property
     def normalised_residuals(self) -> FloatArray:
@@ -367,7 +367,7 @@ class Fit:
     @cached_property
     def radius(self) -> FloatArray:
         """Distance of the included in-plane samples from the centre, shape (N,). [m]"""
-        x, y = self._problem.position
+        x, y = self._problem.samples.position
         return np.asarray(np.hypot(x - self.centre[0], y - self.centre[1]))
 
     def __str__(self) -> str:
@@ -429,7 +429,7 @@ class Fit:
             quick = math.sqrt(variance) if variance >= 0.0 else math.nan
         if name == problem.strength_name:
             return of_strength(problem, solution, quick * abs(self._strength))
-        if name in problem.background_names:
+        if name in problem.samples.background_names:
             raise KeyError(name)
         if name == "core_pressure_drop":
             root = abs(self._swirl_scale) * math.sqrt(self.model.centre_pressure(*self._shape))
@@ -454,7 +454,7 @@ class Fit:
     def _find_limits(self, name: str, level: float) -> tuple[float, float]:
         unit = math.sqrt(self._variance)
         distance = self._coverage_factor(level) * unit
-        if name in self._problem.background_names or self.loss != "linear" or distance == 0.0:
+        if name in self._problem.samples.background_names or self.loss != "linear" or distance == 0.0:
             value = self._best[self.names.index(name)] if name in self.names else self.value(name)
             half = self._coverage_factor(level) * self.uncertainty(name)
             return float(value - half), float(value + half)
@@ -509,7 +509,7 @@ def two_sided_quantiles(value: float, low: float, high: float) -> tuple[float, .
 
 
 def _relative_slope(measure: Any, shape: list[float], which: int) -> float:
-    """d ln m / d(shape parameter)."""
+    """D ln m / d(shape parameter)."""
     h = 1e-5 * shape[which]
     up, down = list(shape), list(shape)
     up[which] += h

@@ -58,7 +58,7 @@ class Solution:
     def chi_square(self) -> float:
         """Sum of squared weighted residuals, and of the prior's."""
         value = self._state.chi_square
-        if value > 1e-8 * self.problem.power:
+        if value > 1e-8 * self.problem.samples.power:
             return value
         # The difference of two nearly equal sums has lost its digits: sum the residuals themselves.
         return float(self.residuals @ self.residuals)
@@ -67,9 +67,9 @@ class Solution:
     def residuals(self) -> FloatArray:
         """Weighted residuals, shape (N,)."""
         response, _ = self.problem.columns(self.nonlinear, ())
-        residuals = self.problem.target - self.linear[0] * response
-        if len(self.problem.background):
-            residuals -= np.array(self.linear[1:]) @ self.problem.background
+        residuals = self.problem.samples.target - self.linear[0] * response
+        if len(self.problem.samples.background):
+            residuals -= np.array(self.linear[1:]) @ self.problem.samples.background
         return residuals
 
     @cached_property
@@ -122,7 +122,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     """
     here = list(start)
     state = _state(problem, here, free, tie)
-    unit = 1.0 / len(problem.target)
+    unit = 1.0 / len(problem.samples.target)
     damping = 0.0
     last_step: list[float] = []
     last = math.inf
@@ -135,7 +135,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
             step, decrement = _step_without(state, stuck, len(free))
         noise = unit * state.chi_square
         quadratic = decrement < _QUADRATIC * noise
-        if decrement <= _ROUNDING * problem.power or (quadratic and decrement > 0.25 * last):
+        if decrement <= _ROUNDING * problem.samples.power or (quadratic and decrement > 0.25 * last):
             converged = True
             break
         if quadratic and decrement * min(decrement / last, 1.0) < _REMAINING * noise:
@@ -149,7 +149,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
             step = _damped(state, damping, len(free))
         trial = _moved(here, free, step)
         new = _state(problem, trial, free, tie)
-        if new.chi_square <= state.chi_square + _EPSILON * problem.power or decrement < _LEVEL * noise:
+        if new.chi_square <= state.chi_square + _EPSILON * problem.samples.power or decrement < _LEVEL * noise:
             here, state = trial, new
             last, last_step = (decrement, step) if not damping else (math.inf, [])
             damping = 0.1 * damping if damping > 1e-4 else 0.0
@@ -183,10 +183,10 @@ class _State:
 
 def _state(problem: Problem, here: list[float], free: tuple[int, ...], tie: Tie | None) -> _State:
     response, derivatives = problem.columns(here, free)
-    number = len(problem.background)
+    number = len(problem.samples.background)
     if tie is None:
-        rows = [response, *problem.background, *derivatives] if number else [response, *derivatives]
-        target = problem.target
+        rows = [response, *problem.samples.background, *derivatives] if number else [response, *derivatives]
+        target = problem.samples.target
         eliminated = 1 + number
         strength = math.nan
     else:
@@ -195,8 +195,8 @@ def _state(problem: Problem, here: list[float], free: tuple[int, ...], tie: Tie 
             column if index < CORE_RADIUS else column + slopes[index - CORE_RADIUS] * response
             for index, column in zip(free, derivatives, strict=True)
         ]
-        rows = [*problem.background, *derivatives]
-        target = problem.target - strength * response
+        rows = [*problem.samples.background, *derivatives]
+        target = problem.samples.target - strength * response
         eliminated = number
     matrix = np.array([*rows, target])
     products: list[list[float]] = (matrix @ matrix.T).tolist()
@@ -207,9 +207,9 @@ def _state(problem: Problem, here: list[float], free: tuple[int, ...], tie: Tie 
     if tie is None:
         strength = linear[0]
     chi_square = power - sum([value * value for value in half])
-    if problem.prior is not None and problem.prior[0] in free:
+    if problem.samples.prior is not None and problem.samples.prior[0] in free:
         # In units of the matrix a relative step is strength times the step.
-        index, value, uncertainty = problem.prior
+        index, value, uncertainty = problem.samples.prior
         off, weight = (value - here[index]) / uncertainty, here[CORE_RADIUS] / uncertainty
         row = eliminated + free.index(index)
         chi_square += off * off
@@ -276,7 +276,11 @@ def _damped(state: _State, damping: float, free: int) -> list[float]:
     for i in range(len(products) - free, len(products)):
         products[i][i] *= 1.0 + damping
     lower, half = _factor(products, state.overlap, 0, len(products), [], [])
-    return [value / state.strength for value in _back(lower, half)[len(products) - free :]] if state.strength else [0.0] * free
+    return (
+        [value / state.strength for value in _back(lower, half)[len(products) - free :]]
+        if state.strength
+        else [0.0] * free
+    )
 
 
 def _series(step: list[float], last: list[float]) -> float:
@@ -307,7 +311,8 @@ def _at_bounds(here: list[float], free: tuple[int, ...], step: list[float]) -> l
     return [
         position
         for position, index in enumerate(free)
-        if index >= SHAPE and ((here[index] >= high and step[position] > 0.0) or (here[index] <= low and step[position] < 0.0))
+        if index >= SHAPE
+        and ((here[index] >= high and step[position] > 0.0) or (here[index] <= low and step[position] < 0.0))
     ]
 
 

@@ -31,9 +31,9 @@ def search(problem: Problem, *, centre: tuple[float | None, float | None], sever
     several : int
         How many different candidates are wanted.
     """
-    x, y = problem.position
-    toward_x, toward_y = problem.toward
-    target, background = problem.target, problem.background
+    x, y = problem.samples.position
+    toward_x, toward_y = problem.samples.toward
+    target, background = problem.samples.target, problem.samples.background
     if len(target) > 2 * _MOST_POINTS:
         chosen = np.random.default_rng(0).choice(len(target), 2 * _MOST_POINTS, replace=False)
         x, y, toward_x, toward_y, target = (a[chosen] for a in (x, y, toward_x, toward_y, target))

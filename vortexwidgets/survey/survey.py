@@ -390,7 +390,7 @@ class Survey:
         """Number of different points at which a used sample was taken."""
         return len({*zip(self.x[self.included].tolist(), self.y[self.included].tolist(), strict=True)})
 
-    @property
+    @cached_property
     def two_components(self) -> bool:
         """Whether the samples in use see both directions of the swirl's plane."""
         used = self.direction[self.in_plane]
