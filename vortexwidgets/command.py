@@ -121,8 +121,8 @@ def _parser() -> _Parser:
 
 
 _UNITS_NOTE = (
-    "Values carry a unit, as '59 degF', '101.3 kPa' or '92.0 ± 0.3 kPa' (standard uncertainty); a bare number is in the "
-    "unit named above. An option replaces what the file says."
+    "Values carry a unit, as '59 degF', '101.3 kPa' or '92.0 ± 0.3 kPa' (standard uncertainty); a bare number is in "
+    "the unit named above. An option replaces what the file says."
 )
 
 

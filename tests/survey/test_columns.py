@@ -36,6 +36,8 @@ from vortexwidgets.survey.columns import is_unit, understand
         ("± [m/s]", "uncertainty", "", "m/s", ""),
         ("u rms [m/s]", "rms", "u", "m/s", ""),
         ("sdU_mps", "rms", "u", "m/s", ""),
+        ("sdV_mps", "rms", "v", "m/s", ""),
+        ("vrms [m/s]", "rms", "v", "m/s", ""),
         ("rms [m/s]", "rms", "", "m/s", ""),
         ("samples", "samples", "", None, ""),
         ("static pressure [kPa]", "pressure", "", "kPa", ""),

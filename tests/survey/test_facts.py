@@ -50,6 +50,32 @@ def test_a_coverage_factor_divides_every_uncertainty():
     assert found.notes == ("every uncertainty of the file is divided by its coverage factor 2",)
 
 
+@pytest.mark.parametrize(
+    ("comment", "factor"),
+    [
+        ("k = 2", 2.0),
+        ("All uncertainties are expanded (k=2).", 2.0),
+        ("coverage: 95 %", 1.96),
+        ("coverage: 68.27 %", 1.0),
+    ],
+)
+def test_coverage_as_people_state_it(comment, factor):
+    assert facts(comment).values["coverage_factor"] == pytest.approx(factor, abs=1e-3)  # JCGM 100:2008, table G.1
+
+
+@pytest.mark.parametrize(
+    ("comment", "fact", "value"),
+    [
+        ("axes: x to the right, y positive downward", "axes", "x right, y down"),
+        ("y axis: points down", "axes", "y down"),
+        ("view: looking downstream", "view", "upstream"),
+        ("seen from: downstream", "view", "downstream"),
+    ],
+)
+def test_directions_as_people_state_them(comment, fact, value):
+    assert facts(comment).values[fact] == value
+
+
 def test_other_comments_stay_text_and_misspellings_are_asked_about():
     found = facts("operator: somebody", "measured on Monday", "temprature: 15 degC", "2021-03-04 12:30: windy")
     assert found.values == {"operator": "somebody", "temprature": "15 degC"}

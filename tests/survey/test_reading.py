@@ -119,6 +119,13 @@ def test_a_radius_has_its_centre(survey_of):
     np.testing.assert_array_equal(mirrored.velocity, [1, 2, 1])
 
 
+def test_a_ratio_finds_the_scale_it_names(survey_of):
+    survey = survey_of("# R: 50 mm\n# V_tip: 30 m/s\n# free stream: 2 m/s\nr/R,V/V_tip\n.1,.5\n.2,.4\n.4,.2\n")
+    np.testing.assert_allclose(survey.x, [0.005, 0.01, 0.02])
+    np.testing.assert_allclose(survey.velocity, [15, 12, 6])
+    assert survey.provenance.columns[1] == "V/V_tip -> swirl, positive counter-clockwise, times the v tip"
+
+
 def test_an_uncertain_scale_is_common_to_all_samples(survey_of):
     survey = survey_of(
         "# free stream: 10.0 ± 0.3 m/s\n# velocity gain: 1 ± 0.04\n# chord: 50.0 ± 0.5 mm\nx/c,V/U\n-1,-.1\n0,0\n1,.1\n"

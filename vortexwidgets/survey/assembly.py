@@ -122,9 +122,9 @@ def _traverse(readings: Readings, place: str) -> dict[str, Any]:
     if cross == "speed" and np.nanmin(readings.by_role["speed"].values) >= 0.0:
         heading = readings.by_role["speed"].heading.text
         raise SurveyError(
-            f"{readings.file}, column '{heading}': a speed has no sign; a traverse needs the component across the line, "
-            "positive to the left of increasing position; give that, or name the position 'radius' where the centre is "
-            "known."
+            f"{readings.file}, column '{heading}': a speed has no sign; a traverse needs the component across the "
+            "line, positive to the left of increasing position; give that, or name the position 'radius' where the "
+            "centre is known."
         )
     position = readings.length(place, "position along the line, the centre is fitted")
     meaning = "component across the line, positive to the left of increasing position"

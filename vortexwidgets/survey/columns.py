@@ -49,10 +49,8 @@ _NAMES: dict[str, tuple[str, ...]] = {
     ),
 }  # fmt: skip
 _ROLE = {name: role for role, names in _NAMES.items() for name in names}
-_SPREAD = (
-    r"(?:expanded |standard |std )?(?:uncertainty|unc|sigma|error|err)|sem|standard error|std err|stderr|±|\+/?-|dv|"
-    r"delta v"
-)
+_SPREAD = r"(?:expanded |standard |std )?(?:uncertainty|unc|sigma|error|err)|sem|standard error|std err|stderr"
+_SPREAD_ALONE = r"±|\+/?-|dv|delta v"
 _RMS = r"rms|std|sd|stdev|std dev|standard deviation|sdev"
 
 # Units that may stand without brackets; inside brackets any unit that pint knows is read.
@@ -222,7 +220,7 @@ def _named(text: str, name: str) -> Heading:
     if key in _ROLE:
         return Heading(text, name.strip(), _ROLE[key])
     for role, words in (("uncertainty", _SPREAD), ("rms", _RMS)):
-        if re.fullmatch(words, key):
+        if re.fullmatch(words, key) or (role == "uncertainty" and re.fullmatch(_SPREAD_ALONE, key)):
             return Heading(text, name.strip(), role)
         found = re.fullmatch(rf"(?:{words})(?: (?:of|in|on))?(?: the)? ?(?P<of>.+)", key)
         found = found or re.fullmatch(rf"(?P<of>.+?) ?(?:{words})", key)

@@ -7,6 +7,7 @@ import difflib
 import re
 from collections.abc import Iterable
 from dataclasses import dataclass
+from statistics import NormalDist
 
 from vortexwidgets import units
 from vortexwidgets.survey.samples import FACT_QUANTITIES, SurveyError
@@ -29,6 +30,12 @@ _KEYS: dict[str, tuple[str, ...]] = {
         "free stream velocity",
         "u inf",
         "uinf",
+        "v inf",
+        "vinf",
+        "freestream",
+        "freestream velocity",
+        "u0",
+        "u",
         "speed",
         "tunnel speed",
     ),
@@ -40,7 +47,7 @@ _KEYS: dict[str, tuple[str, ...]] = {
     "probe_width": ("probe width", "probe size", "measuring volume", "interrogation window"),
     "averaging": ("averaging", "probe averaging"),
     "translation_speed": ("translation speed", "translation"),
-    "length_scale": ("length scale", "chord", "reference length", "c"),
+    "length_scale": ("length scale", "chord", "chord length", "reference length", "c"),
     "velocity_scale": ("velocity scale", "reference velocity", "reference speed"),
     "reference_radius": ("reference radius", "pipe radius", "wall radius"),
     "tensile_strength": ("tensile strength",),
@@ -50,13 +57,15 @@ _KEYS: dict[str, tuple[str, ...]] = {
     "velocity_gain": ("velocity gain", "gain", "velocity gain uncertainty", "gain uncertainty"),
     "position_scale": ("position scale", "position scale uncertainty", "scale uncertainty"),
     "uncertainty": ("uncertainty", "velocity uncertainty", "uncertainty of velocity", "noise"),
-    "coverage_factor": ("coverage factor", "coverage", "k"),
-    "samples": ("samples", "number of samples"),
-    "effective_samples": ("effective samples", "independent samples", "effective number of samples"),
+    "coverage_factor": ("coverage factor", "coverage factor k", "uncertainty coverage factor", "coverage", "k"),
+    "samples": ("samples", "number of samples", "n samples", "samples per point", "samples per position", "n"),
+    "effective_samples": (
+        "effective samples", "independent samples", "effective number of samples", "n eff", "neff",
+    ),
     "axes": ("axes", "axis directions"),
-    "view": ("view", "viewed from", "seen from"),
+    "view": ("view", "view from", "viewed from", "seen from", "looking"),
     "vortex_axis": ("vortex axis", "axis of vortex", "axis of the vortex"),
-}
+}  # fmt: skip
 _FACT = {key: fact for fact, keys in _KEYS.items() for key in keys}
 
 _WORDS = {  # facts with a short list of values
@@ -67,8 +76,8 @@ _WORDS = {  # facts with a short list of values
     "averaging": {"along": "along", "across": "across", "square": "square"},
     "inception": {"incipient": "incipient", "desinent": "desinent"},
     "view": {
-        "upstream": "upstream", "from upstream": "upstream", "downstream": "downstream",
-        "from downstream": "downstream",
+        "upstream": "upstream", "from upstream": "upstream", "looking downstream": "upstream",
+        "downstream": "downstream", "from downstream": "downstream", "looking upstream": "downstream",
     },
     "vortex_axis": {"x": "x", "y": "y", "z": "z"},
 }  # fmt: skip
@@ -125,16 +134,21 @@ def read_facts(comments: Iterable[tuple[int, str]], file: str) -> Facts:
     notes: list[str] = []
     others: dict[str, str | float | Estimate] = {}
     for row, comment in comments:
+        stated = re.search(r"uncertaint.*\bk\s*=\s*(\d+(?:[.,]\d+)?)", comment, re.IGNORECASE)
+        if stated:  # "all uncertainties are expanded (k = 2)"
+            comment = f"coverage factor: {stated.group(1)}"
         found = re.fullmatch(r"([^:=]{1,60}?)\s*[:=]\s*(\S.*)", comment)
         if not found:
             continue
         key, value = found.group(1).strip(), found.group(2).strip()
         key, unit = _key_and_unit(key)
-        plain = " ".join(re.sub(r"[_\-∞]+", lambda sign: " inf" if "∞" in sign.group() else " ", key.lower()).split())
+        plain = plain_key(key)
+        if plain in ("x axis", "y axis", "z axis"):  # "y axis: down"
+            plain, value = "axes", f"{plain[0]} {value}"
         fact = _FACT.get(plain)
         if fact is None:
             if re.fullmatch(r"[a-z][a-z ]{0,39}", plain) and plain.count(" ") < 4:
-                others[plain.replace(" ", "_")] = value[:LONGEST_TEXT]
+                others[plain.replace(" ", "_")] = _printable(value)
                 close = difflib.get_close_matches(plain, _FACT, n=1, cutoff=0.82)
                 if close:
                     notes.append(
@@ -160,6 +174,17 @@ def read_facts(comments: Iterable[tuple[int, str]], file: str) -> Facts:
     return Facts({**others, **values}, tuple(notes))
 
 
+def plain_key(key: str) -> str:
+    """Write a key without signs and capitals: "U∞" is "u inf"."""
+    return " ".join(re.sub(r"[_\-]+", " ", key.lower().replace("∞", " inf")).split())
+
+
+def fact_named(key: str) -> str:
+    """Give the fact that a key stands for, the plain key with underscores when it is not a known one."""
+    plain = plain_key(key)
+    return _FACT.get(plain, plain.replace(" ", "_"))
+
+
 def read_fact(fact: str, text: str) -> str | float | Estimate:
     """Read the value of one fact given outside a file, as "1.000 ± 0.005" for the velocity gain.
 
@@ -179,7 +204,7 @@ def _key_and_unit(key: str) -> tuple[str, str]:
 def _value(fact: str, key: str, text: str, where: str) -> str | float | Estimate:
     """Read one value; messages say where it stands."""
     if fact in _FREE_TEXT:
-        return "".join(sign for sign in text if sign.isprintable())[:LONGEST_TEXT]
+        return _printable(text)
     if fact in _WORDS:
         word = _WORDS[fact].get(" ".join(text.lower().split()))
         if word is None:
@@ -193,6 +218,8 @@ def _value(fact: str, key: str, text: str, where: str) -> str | float | Estimate
             return _factor(fact, text)
         if fact in _PLAIN_NUMBERS:
             percent = text.endswith("%")
+            if percent and fact == "coverage_factor":  # of a normal distribution
+                return NormalDist().inv_cdf(0.5 + 0.005 * min(max(units.parse_number(text.rstrip("% ")), 1.0), 99.9))
             return units.parse_number(text.rstrip("% ")) * (0.01 if percent else 1.0)
         quantity = FACT_QUANTITIES.get(fact) or _OTHER_QUANTITIES[fact]
         default = "g/kg" if fact == "salinity" else None
@@ -204,10 +231,11 @@ def _value(fact: str, key: str, text: str, where: str) -> str | float | Estimate
 
 def _axes(key: str, text: str, where: str) -> str:
     """Read "y down" or "x left, y down"; right and up are the rule."""
-    words = re.findall(r"\b([xyz])\b[\s:]*(?:is |points )?(right|left|up|upwards|down|downwards)\b", text.lower())
+    filler = r"(?:[\s:]+(?:axis|is|points|pointing|positive|to|the|towards))*"
+    words = re.findall(rf"\b([xyz])\b{filler}[\s:]+(right|left|up|upwards?|down|downwards?)\b", text.lower())
     if not words:
         raise SurveyError(f"{where}: {key} '{text[:60]}' is not known; write for example 'y down' or 'x left, y down'.")
-    return ", ".join(f"{letter} {direction.removesuffix('wards')}" for letter, direction in words)
+    return ", ".join(f"{letter} {direction.removesuffix('s').removesuffix('ward')}" for letter, direction in words)
 
 
 def _factor(fact: str, text: str) -> Estimate:
@@ -236,3 +264,7 @@ def _divided(value: str | float | Estimate, coverage: float) -> str | float | Es
     if isinstance(value, Estimate):
         return dataclasses.replace(value, uncertainty=value.uncertainty / coverage)
     return value
+
+
+def _printable(text: str) -> str:
+    return "".join(sign for sign in text if sign.isprintable())[:LONGEST_TEXT]

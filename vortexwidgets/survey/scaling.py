@@ -9,9 +9,9 @@ import numpy as np
 
 from vortexwidgets import units
 from vortexwidgets.survey.columns import Heading
-from vortexwidgets.survey.facts import Facts
+from vortexwidgets.survey.facts import Facts, fact_named
 from vortexwidgets.survey.samples import FARTHEST, FASTEST, FloatArray, SurveyError
-from vortexwidgets.uncertainty import Estimate
+from vortexwidgets.uncertainty import Estimate, as_estimate
 
 _MARKERS = (-99.99, -999.0, -9999.0, -99999.0, -999.25, -32768.0, 999.0, 9999.0, 99999.0, 999.99)
 _HUGE = 1e9
@@ -57,6 +57,7 @@ class Readings:
     notes: list[str] = field(default_factory=list, init=False)
     reasons: dict[int, str] = field(default_factory=dict, init=False)
     spread_of_scale: dict[str, float] = field(default_factory=dict, init=False)
+    scale_names: dict[str, str] = field(default_factory=dict, init=False)
     by_role: dict[str, Series] = field(init=False)
 
     def __post_init__(self) -> None:
@@ -119,7 +120,7 @@ class Readings:
         heading = item.heading
         values = self._without_markers(item)
         scaled = values * self._scale(heading, quantity) + self._offset(heading, quantity)
-        self.taken[heading.text] = meaning + (f", times {self._scale_name(heading)}" if heading.per else "")
+        self.taken[heading.text] = meaning + (f", times the {self.scale_names[heading.text]}" if heading.per else "")
         with np.errstate(invalid="ignore"):
             bad = np.flatnonzero(np.abs(scaled) > limit)
         if bad.size:
@@ -176,17 +177,16 @@ class Readings:
         except ValueError as error:
             raise SurveyError(f"{self.file}, column '{heading.text}': {error}") from error
 
-    def _scale_name(self, heading: Heading) -> str:
-        if heading.kind == "length":
-            return "the length scale"
-        return "the velocity scale" if "velocity_scale" in self.facts.values else "the free stream"
-
     def _reference(self, heading: Heading) -> Estimate:
         """Find the length or velocity that a column of ratios was divided by."""
-        names = ("length_scale",) if heading.kind == "length" else ("velocity_scale", "free_stream")
-        for name in names:
+        own = fact_named(heading.per)
+        usual = ("length_scale",) if heading.kind == "length" else ("velocity_scale", "free_stream")
+        for name in (own, *usual):
             estimate = self.facts.estimate(name)
+            if estimate is None and name == own and self.facts.text(own):  # "r/R" and the fact "R: 50 mm"
+                estimate = self._read_scale(own, "length_scale" if heading.kind == "length" else "free_stream")
             if estimate is not None:
+                self.scale_names[heading.text] = name.replace("_", " ")
                 self.spread_of_scale[heading.kind] = estimate.uncertainty / abs(estimate.value)
                 return estimate
         example = "length scale: 50 mm" if heading.kind == "length" else "free stream: 12 m/s"
@@ -194,6 +194,12 @@ class Readings:
             f"{self.file}: column '{heading.text}' is a ratio; state what it was divided by in a comment line "
             f"'# {example}', or name the unit of the column."
         )
+
+    def _read_scale(self, name: str, quantity: str) -> Estimate:
+        try:
+            return as_estimate(units.read_quantity(self.facts.text(name), quantity), quantity)
+        except ValueError as error:
+            raise SurveyError(f"{self.file}: fact '{name}': {error}") from error
 
     def common(self) -> dict[str, Estimate]:
         """Uncertainties common to all samples; a scale that is uncertain is one of them."""

@@ -73,9 +73,9 @@ def screen(survey: Survey, centre: tuple[float, float] | None = None, peak_radiu
     median of the neighbours' own distances from that median (at least what the noise explains) and ε the noise level
     [1]_. The published limit is 2. The noise level is the stated uncertainty or the scatter of the samples about the
     straight line between their neighbours, whichever is larger. A sample that lies on the trend of its neighbours is no
-    outlier, which matters at the ends of a survey. Where the neighbours turn sign the core lies between them, and r_m is
-    their second largest distance; a lone station inside a core that the stations do not resolve is kept as well. Only
-    gross errors are found; smaller ones are a robust loss's job.
+    outlier, which matters at the ends of a survey. Where the neighbours turn sign the core lies between them, and r_m
+    is their second largest distance; a lone station inside a core that the stations do not resolve is kept as well.
+    Only gross errors are found; smaller ones are a robust loss's job.
 
     References
     ----------

@@ -102,7 +102,7 @@ def parse_table(content: bytes, file: str) -> Table:
     lines: list[tuple[int, str]] = []
     for number, line in enumerate(text.split("\n"), start=1):
         if len(line) > LONGEST_LINE:
-            raise SurveyError(f"{file}, row {number}: the line has {len(line)} characters; is this a survey file?")
+            raise SurveyError(f"{file}, row {number}: the line has {len(line)} characters; give one row per line.")
         if line.lstrip().startswith(("#", "%", "//")):
             comments.append((number, line.strip().lstrip("#%/").strip()))
         elif line.strip():
@@ -231,7 +231,7 @@ def _header(
         headings = _merged(candidates[index][1], rows, first) if separator == " " else candidates[index][1]
         while headings and not headings[-1]:
             headings = headings[:-1]
-        if _known(headings) or len(headings) > 1:
+        if _known(headings) or (len(headings) > 1 and first < len(rows)):
             if len(headings) > MOST_COLUMNS:
                 raise SurveyError(f"{file} has {len(headings)} columns, the limit is {MOST_COLUMNS}; leave some out.")
             return index, tuple(headings)
