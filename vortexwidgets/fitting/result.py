@@ -95,58 +95,63 @@ class Fit:
         return np.array([self._strength, *solution.linear[1:], *(solution.nonlinear[i] for i in solution.free)])
 
     @cached_property
-    def _linear_covariance(self) -> FloatArray:
-        """Covariance by relative change of strength and nonlinear parameters, all parameters taken as determined."""
-        normal = self._solution.normal
-        try:
-            inverse = np.linalg.inv(normal)
-        except np.linalg.LinAlgError:
-            return np.full(normal.shape, math.nan)
-        return self._turned(self._with_variance(inverse, self._solution.jacobian))
-
-    def _with_variance(self, inverse: FloatArray, jacobian: FloatArray) -> FloatArray:
+    def _relative_covariance(self) -> list[list[float]]:
+        """Covariance by relative change of strength and nonlinear parameters, all taken as determined."""
+        inverse = self._solution.inverse
         if self.loss != "linear":
-            # Huber's sandwich: the rows carry the weights of the robust loss.
-            rows = jacobian * self._solution.residuals
-            return np.asarray(inverse @ (rows @ rows.T) @ inverse)
-        return inverse if self.uncertainties == "absolute" else inverse * self._variance
+            inverse = self._sandwich(np.array(inverse), slice(None)).tolist()
+        elif self.uncertainties == "relative":
+            unit = self._variance
+            inverse = [[unit * value for value in row] for row in inverse]
+        return self._turned(inverse)
 
-    def _turned(self, covariance: FloatArray) -> FloatArray:
+    def _sandwich(self, inverse: FloatArray, keep: Any) -> FloatArray:
+        """Huber's covariance of a robust fit, whose rows carry the weights of the loss."""
+        rows = self._solution.jacobian[keep] * self._solution.residuals
+        return np.asarray(inverse @ (rows @ rows.T) @ inverse)
+
+    def _turned(self, covariance: list[list[float]]) -> list[list[float]]:
         """From the swirl scale to the strength: circulation is swirl scale times 2π core_radius."""
         if self._problem.by_circulation and "core_radius" in self.names:
-            row = self.names.index("core_radius")
-            covariance = covariance.copy()
-            covariance[0] += covariance[row]
-            covariance[:, 0] += covariance[:, row]
+            turn = self.names.index("core_radius")
+            first = [a + b for a, b in zip(covariance[0], covariance[turn], strict=True)]
+            first[0] += first[turn]
+            covariance = [first, *([f, *row[1:]] for f, row in zip(first[1:], covariance[1:], strict=True))]
         return covariance
+
+    @property
+    def _scale(self) -> list[float]:
+        return [self._strength, *self._solution.scale[1:]]
 
     @cached_property
     def covariance(self) -> FloatArray:
         """Covariance of the free parameters, shape (P, P), SI units."""
-        scale = self._solution.scale.copy()
-        scale[0] = self._strength
-        covariance = self._linear_covariance
+        scale = np.array(self._scale)
+        covariance = np.array(self._relative_covariance)
         if self._open:
             # What is not determined is held at its limit; the rest is known given that.
             keep = np.flatnonzero([name not in self._open for name in self.names])
             covariance = np.full(covariance.shape, math.nan)
             if len(keep):
                 part = np.ix_(keep, keep)
-                solution = self._solution
-                inverse = np.linalg.pinv(solution.normal[part], hermitian=True)
-                covariance[part] = self._with_variance(inverse, solution.jacobian[keep])
+                inverse = np.linalg.pinv(self._solution.normal[part], hermitian=True)
+                covariance[part] = inverse * self._variance if self.loss == "linear" else self._sandwich(inverse, keep)
         return covariance * scale * scale[:, None]
 
     @cached_property
     def values(self) -> FloatArray:
         """Best values of the free parameters, NaN where undetermined."""
-        return np.where([name in self.undetermined for name in self.names], math.nan, self._best)
+        if not self._open:
+            return self._best
+        return np.where([name in self._open for name in self.names], math.nan, self._best)
 
     @cached_property
     def standard_uncertainties(self) -> FloatArray:
         """Roots of the covariance's diagonal."""
-        variance = self.covariance.diagonal()
-        return np.sqrt(np.where(variance >= 0.0, variance, math.nan))
+        if self._open:
+            return np.sqrt(self.covariance.diagonal())
+        relative = self._relative_covariance
+        return np.array([abs(size) * math.sqrt(relative[i][i]) for i, size in enumerate(self._scale)])
 
     @cached_property
     def scatter(self) -> float:
@@ -165,9 +170,9 @@ class Fit:
             return dict.fromkeys(self.names, Status.NO_VORTEX.value)
         found: dict[str, str] = {}
         first = 1 + len(self._problem.samples.background)
-        relative = self._linear_covariance.diagonal().tolist()
+        relative = self._relative_covariance
         for position, index in enumerate(self._solution.free, first):
-            if index < CORE_RADIUS or 0.0 <= relative[position] < _SUSPECT**2:
+            if index < CORE_RADIUS or 0.0 <= relative[position][position] < _SUSPECT**2:
                 continue
             name = self.names[position]
             low, high = self._limits_of(name, 0.95)
@@ -425,7 +430,8 @@ class Fit:
         problem, solution = self._problem, self._solution
         quick = math.nan
         if name in self.names:
-            variance = float(self._linear_covariance.diagonal()[self.names.index(name)])
+            position = self.names.index(name)
+            variance = self._relative_covariance[position][position]
             quick = math.sqrt(variance) if variance >= 0.0 else math.nan
         if name == problem.strength_name:
             return of_strength(problem, solution, quick * abs(self._strength))

@@ -36,8 +36,8 @@ SHAPE_BOUNDS = (0.02, 200.0)
 class Solution:
     """A minimum, or where the iteration stopped.
 
-    The scaled parameters are [swirl scale (unless tied), background..., free nonlinear...]; the swirl scale and the
-    nonlinear ones by relative change, and `scale` turns them into parameters.
+    The scaled parameters are [swirl scale, background..., free nonlinear...]; the swirl scale and the nonlinear ones by
+    relative change, and `scale` turns them into parameters.
     """
 
     problem: Problem
@@ -46,8 +46,8 @@ class Solution:
     linear: list[float]  # swirl scale, background...
     steps: int
     converged: bool
-    tied: bool
     _state: _State
+    _matrix: list[list[float]] | None
 
     @property
     def swirl_scale(self) -> float:
@@ -75,26 +75,43 @@ class Solution:
     @cached_property
     def normal(self) -> FloatArray:
         """Matrix of the normal equations by the scaled parameters, shape (P, P)."""
+        factor = np.array(self._factors)
+        return np.array([row[: len(factor)] for row in self._products]) * factor * factor[:, None]
+
+    @cached_property
+    def inverse(self) -> list[list[float]]:
+        """Inverse of `normal` as rows; infinite where a parameter does not matter."""
         factor = self._factors
-        size = len(factor)
-        return np.array(self._state.products)[:, :size] * factor * factor[:, None]
+        lower: list[list[float]] = []
+        _factor(self._products, [0.0] * len(factor), lower, [], len(factor))
+        return [
+            [value / (f * g) for value, g in zip(row, factor, strict=True)]
+            for row, f in zip(_inverted(lower), factor, strict=True)
+        ]
 
     @cached_property
     def jacobian(self) -> FloatArray:
         """Derivatives of the weighted model by the scaled parameters, shape (P, N)."""
-        return np.array(self._state.columns) * self._factors[:, None]
-
-    @property
-    def _factors(self) -> FloatArray:
-        strength = self.linear[0]
-        return np.array([strength] * (not self.tied) + [1.0] * (len(self.linear) - 1) + [strength] * len(self.free))
+        rows = _state(self.problem, self.nonlinear, self.free, None).rows
+        return np.array(rows) * np.array(self._factors)[:, None]
 
     @cached_property
-    def scale(self) -> FloatArray:
-        """Parameter change per scaled change, shape (P,)."""
-        strength = [] if self.tied else [self.linear[0]]
+    def _products(self) -> list[list[float]]:
+        """Inner products of the columns at the minimum itself, which the last step no longer asked for."""
+        if self._matrix is not None:
+            return self._matrix
+        return _state(self.problem, self.nonlinear, self.free, None).products
+
+    @property
+    def _factors(self) -> list[float]:
+        strength = self.linear[0]
+        return [strength, *([1.0] * (len(self.linear) - 1)), *([strength] * len(self.free))]
+
+    @property
+    def scale(self) -> list[float]:
+        """Parameter change per scaled change."""
         lengths = [self.nonlinear[max(index, CORE_RADIUS)] for index in self.free]
-        return np.array(strength + [1.0] * (len(self.linear) - 1) + lengths)
+        return [self.linear[0], *([1.0] * (len(self.linear) - 1)), *lengths]
 
 
 def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie | None = None) -> Solution:
@@ -125,6 +142,9 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     unit = 1.0 / len(problem.samples.target)
     damping = 0.0
     last_step: list[float] = []
+    linear: list[float] = []
+    before: _State | None = None
+    matrix: list[list[float]] | None = None
     last = math.inf
     converged = False
     steps = 0
@@ -140,9 +160,13 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
             break
         if quadratic and decrement * min(decrement / last, 1.0) < _REMAINING * noise:
             # What is left after this step shrinks by a known factor: take the whole series at once.
-            series = _series(step, last_step)
+            ratio = _ratio(step, last_step)
+            series = 1.0 / (1.0 - ratio)
+            if before is not None and tie is None:
+                matrix = _ahead(before.products, state.products, series * ratio)
             here = _moved(here, free, [series * value for value in step])
-            state.linear = [a + series * (b - a) for a, b in zip(state.linear, state.full, strict=True)]
+            now, then = state.linear(tied=tie is not None), state.linear_after(tied=tie is not None)
+            linear = [a + series * (b - a) for a, b in zip(now, then, strict=True)]
             converged = True
             break
         if damping:
@@ -150,14 +174,16 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
         trial = _moved(here, free, step)
         new = _state(problem, trial, free, tie)
         if new.chi_square <= state.chi_square + _EPSILON * problem.samples.power or decrement < _LEVEL * noise:
-            here, state = trial, new
+            here, before, state = trial, state, new
             last, last_step = (decrement, step) if not damping else (math.inf, [])
             damping = 0.1 * damping if damping > 1e-4 else 0.0
         elif damping < 1e10:
             damping = max(10.0 * damping, 1e-3)
         else:
             break
-    return Solution(problem, here, free, state.linear, steps, converged, tie is not None, state)
+    if not linear:
+        linear = state.linear(tied=tie is not None)
+    return Solution(problem, here, free, linear, steps, converged, state, matrix)
 
 
 def misfit(problem: Problem, here: list[float]) -> float:
@@ -167,73 +193,89 @@ def misfit(problem: Problem, here: list[float]) -> float:
 
 @dataclass(eq=False, slots=True)
 class _State:
-    """Where the iteration stands: everything follows from the inner products of the columns."""
+    """Where the iteration stands: everything follows from the inner products of the columns.
 
-    response: FloatArray
-    columns: list[FloatArray]  # background and derivatives, not yet times the strength
+    The columns are [response unless tied, background..., derivatives...]; the first `eliminated` of them are linear.
+    """
+
+    rows: list[FloatArray]
     products: list[list[float]]
     overlap: list[float]
+    eliminated: int
+    lower: list[list[float]]
+    half: list[float]
     strength: float
-    linear: list[float]  # eliminated at this point
-    full: list[float]  # the same after the step
     step: list[float]  # relative, of the free nonlinear parameters
     chi_square: float
     decrement: float
 
+    def linear(self, *, tied: bool) -> list[float]:
+        """Swirl scale and background, eliminated at this point."""
+        level = _back(self.lower[: self.eliminated], self.half[: self.eliminated])
+        return [self.strength, *level] if tied else level
+
+    def linear_after(self, *, tied: bool) -> list[float]:
+        """The same after the step."""
+        level = _back(self.lower, self.half)[: self.eliminated]
+        return [self.strength, *level] if tied else level
+
 
 def _state(problem: Problem, here: list[float], free: tuple[int, ...], tie: Tie | None) -> _State:
-    response, derivatives = problem.columns(here, free)
-    number = len(problem.samples.background)
-    if tie is None:
-        rows = [response, *problem.samples.background, *derivatives] if number else [response, *derivatives]
-        target = problem.samples.target
-        eliminated = 1 + number
-        strength = math.nan
-    else:
-        strength, slopes = tie(here[CORE_RADIUS], here[3:])
-        derivatives = [
+    samples = problem.samples
+    response, rows = problem.columns(here, free)
+    eliminated = len(samples.background)
+    target = samples.target
+    strength = math.nan
+    if tie is not None:
+        strength, slopes = tie(here[CORE_RADIUS], here[SHAPE:])
+        rows = [
             column if index < CORE_RADIUS else column + slopes[index - CORE_RADIUS] * response
-            for index, column in zip(free, derivatives, strict=True)
+            for index, column in zip(free, rows, strict=True)
         ]
-        rows = [*problem.samples.background, *derivatives]
-        target = problem.samples.target - strength * response
-        eliminated = number
+        target = target - strength * response
+    if eliminated:
+        rows = [*samples.background, *rows]
+    if tie is None:
+        rows.insert(0, response)
+        eliminated += 1
     matrix = np.array([*rows, target])
     products: list[list[float]] = (matrix @ matrix.T).tolist()
     overlap = products.pop()  # the last row and column are the target's
-    power = overlap.pop()
-    lower, half = _factor(products, overlap, 0, eliminated, [], [])
-    linear = _back(lower, half)
-    if tie is None:
-        strength = linear[0]
-    chi_square = power - sum([value * value for value in half])
-    if problem.samples.prior is not None and problem.samples.prior[0] in free:
+    chi_square = overlap.pop()
+    lower: list[list[float]] = []
+    half: list[float] = []
+    if samples.prior is None or samples.prior[0] not in free:
+        _factor(products, overlap, lower, half, len(overlap))
+        if tie is None:
+            strength = half[0] / lower[0][0] if eliminated == 1 else _back(lower[:eliminated], half[:eliminated])[0]
+    else:
+        _factor(products, overlap, lower, half, eliminated)
+        if tie is None:
+            strength = _back(lower, half)[0]
         # In units of the matrix a relative step is strength times the step.
-        index, value, uncertainty = problem.samples.prior
+        index, value, uncertainty = samples.prior
         off, weight = (value - here[index]) / uncertainty, here[CORE_RADIUS] / uncertainty
         row = eliminated + free.index(index)
         chi_square += off * off
-        products[row][row] += (weight / strength) ** 2
-        overlap[row] += weight * off / strength
-    lower, half = _factor(products, overlap, eliminated, len(overlap), lower, half)
-    solved = _back(lower, half)
+        if strength:
+            products[row][row] += (weight / strength) ** 2
+            overlap[row] += weight * off / strength
+        _factor(products, overlap, lower, half, len(overlap))
+    chi_square -= sum([value * value for value in half[:eliminated]])
     decrement = sum([value * value for value in half[eliminated:]])
+    solved = _back(lower, half)
     step = [value / strength for value in solved[eliminated:]] if strength else [0.0] * len(free)
-    full = solved[:eliminated]
-    if tie is not None:
-        linear, full = [strength, *linear], [strength, *full]
-    return _State(response, rows, products, overlap, strength, linear, full, step, chi_square, decrement)
+    return _State(rows, products, overlap, eliminated, lower, half, strength, step, chi_square, decrement)
 
 
 _SINGULAR = 1e-14  # of a diagonal element: what is left of it is rounding
 
 
 def _factor(
-    matrix: list[list[float]], right: list[float], first: int, last: int, lower: list[list[float]], half: list[float]
-) -> tuple[list[list[float]], list[float]]:
-    """Continue a Cholesky factor L and L⁻¹ right by the rows first to last; a singular row is left out of the solution."""
-    lower, half = list(lower), list(half)
-    for i in range(first, last):
+    matrix: list[list[float]], right: list[float], lower: list[list[float]], half: list[float], last: int
+) -> None:
+    """Continue a Cholesky factor L and L⁻¹ right up to a row; a row that depends on the others is left out."""
+    for i in range(len(half), last):
         source = matrix[i]
         row: list[float] = []
         value = right[i]
@@ -247,15 +289,33 @@ def _factor(
             row.append(entry)
             pivot -= entry * entry
             value -= entry * half[j]
-        if pivot <= _SINGULAR * source[i]:
-            row.append(math.inf)
-            half.append(0.0)
-        else:
+        if pivot > _SINGULAR * source[i]:
             pivot = math.sqrt(pivot)
             row.append(pivot)
             half.append(value / pivot)
+        else:
+            row.append(math.inf)
+            half.append(0.0)
         lower.append(row)
-    return lower, half
+
+
+def _inverted(lower: list[list[float]]) -> list[list[float]]:
+    """Inverse of L Lᵀ; infinite on the diagonal of a row that was left out."""
+    size = len(lower)
+    columns = []
+    for i in range(size):
+        unit = [0.0] * size
+        unit[i] = 1.0
+        for j in range(i, size):
+            row = lower[j]
+            value = unit[j]
+            for k in range(i, j):
+                value -= row[k] * unit[k]
+            unit[j] = value / row[j]
+        columns.append(_back(lower, unit))
+        if lower[i][i] == math.inf:
+            columns[i][i] = math.inf
+    return columns
 
 
 def _back(lower: list[list[float]], half: list[float]) -> list[float]:
@@ -283,11 +343,16 @@ def _damped(state: _State, damping: float, free: int) -> list[float]:
     )
 
 
-def _series(step: list[float], last: list[float]) -> float:
-    """Sum of the geometric series of steps over its first term, where two of them show the ratio (Aitken)."""
+def _ratio(step: list[float], last: list[float]) -> float:
+    """Ratio of the geometric series of steps (Aitken); 0 where two of them do not show one."""
     size = sum([value * value for value in last])
     ratio = sum([a * b for a, b in zip(step, last, strict=True)]) / size if size else 0.0
-    return 1.0 / (1.0 - ratio) if abs(ratio) < 0.5 else 1.0
+    return ratio if abs(ratio) < 0.5 else 0.0
+
+
+def _ahead(before: list[list[float]], now: list[list[float]], further: float) -> list[list[float]]:
+    """Matrix after one more step, `further` times the last one, along the same line."""
+    return [[b + further * (b - a) for a, b in zip(old, new, strict=True)] for old, new in zip(before, now, strict=True)]
 
 
 def _moved(here: list[float], free: tuple[int, ...], step: list[float]) -> list[float]:
@@ -318,10 +383,12 @@ def _at_bounds(here: list[float], free: tuple[int, ...], step: list[float]) -> l
 
 def _step_without(state: _State, stuck: list[int], free: int) -> tuple[list[float], float]:
     """Step and promised decrease with some nonlinear parameters held."""
-    eliminated = len(state.overlap) - free
+    eliminated = state.eliminated
     keep = [row for row in range(len(state.overlap)) if row - eliminated not in stuck]
     products = [[state.products[row][column] for column in keep] for row in keep]
-    lower, half = _factor(products, [state.overlap[row] for row in keep], 0, len(keep), [], [])
+    lower: list[list[float]] = []
+    half: list[float] = []
+    _factor(products, [state.overlap[row] for row in keep], lower, half, len(keep))
     solved = dict(zip(keep, _back(lower, half), strict=True))
     step = [solved.get(eliminated + k, 0.0) / state.strength if state.strength else 0.0 for k in range(free)]
     return step, sum([value * value for value in half[eliminated:]])
