@@ -84,6 +84,8 @@ class Appraisal:
         Distinct profiles, best first, with parameters, limits and drop of each.
     core_pressure_drop : Estimate
         Of the instantaneous vortex: weighted over the models that are not rejected. [Pa]
+    centred_drop : Estimate
+        The same if the line of the survey went through the axis; it differs only where that is not known. [Pa]
     core_pressure : Estimate or None
         Absolute pressure on the axis; None without a reference pressure. [Pa]
     core_drops : tuple of CoreDrop
@@ -109,6 +111,7 @@ class Appraisal:
     criterion: str
     core: Core
     core_pressure_drop: Estimate
+    centred_drop: Estimate
     core_pressure: Estimate | None
     core_drops: tuple[CoreDrop, ...]
     envelope: tuple[float, float]
@@ -140,8 +143,10 @@ class Appraisal:
         if math.isnan(drop.value):
             return f"{NO_MODEL_FITS} No core pressure drop is given; see the residuals."
         parts = [f"Core pressure drop {format_estimate(drop)}"]
-        if drop.bound is None or math.isfinite(drop.uncertainty):
-            parts[0] += f" (k = 1) = {self.pressure_constant:.3g} ρ v_peak²"
+        if self.centred_drop.is_determined:
+            if drop.bound is not None:
+                parts.append(f"{format_estimate(self.centred_drop)} if the line went through the axis")
+            parts[-1] += f" (k = 1) = {self.pressure_constant:.3g} ρ v_peak²"
         low, high = self.envelope
         if math.isfinite(high):
             number = sum(not row.rejected for row in self.models)
@@ -328,7 +333,7 @@ def appraise(
             "is taken through the isentropic relation instead of the constant-density drop."
         )
     peak_swirl = best.fit.estimate("peak_swirl")
-    constant = drop.value / (fluid.density.value * vortex.peak_swirl**2)
+    constant = centred.value / (fluid.density.value * vortex.peak_swirl**2)
     drops = named_drops(drop, vortex, wander=instrument.wander if instrument else 0.0) if supported else ()
     core = Core(
         vortex=vortex,
@@ -358,6 +363,7 @@ def appraise(
         criterion=ranking.criterion,
         core=core,
         core_pressure_drop=drop,
+        centred_drop=centred,
         core_pressure=pressure,
         core_drops=drops,
         envelope=envelope,
@@ -365,8 +371,8 @@ def appraise(
         edge_circulation=circulation_at(best.fit, last_radius),
         share_beyond=beyond,
         reference=reference,
-        data_drop=data_drop(screened, best.fit, density=fluid.density, model_drop=drop),
-        total_pressure_deficit=total_pressure_deficit(screened, best.fit, drop, density=fluid.density),
+        data_drop=data_drop(screened, best.fit, density=fluid.density, model_drop=centred),
+        total_pressure_deficit=total_pressure_deficit(screened, best.fit, centred, density=fluid.density),
         consequences=assess_all(core, fluid, site) if supported else (),
         agreements=tuple(check_agreement(row.model.key) for row in (supported or (best,))[:3]),
         assumptions=tuple(assumptions + _assumptions(survey, settings, instrument)),

@@ -308,9 +308,12 @@ def core_pressure_of(drop: Estimate, ambient: Estimate, *, heat_capacity_ratio: 
         exponent = heat_capacity_ratio / (heat_capacity_ratio - 1.0)
         return np.asarray(far * np.maximum(1.0 - fall / (exponent * np.asarray(far)), 0.0) ** exponent)
 
+    if drop.bound is not None:
+        # Both limits at 95 %: the pressure lies below the highest reference less the smallest drop.
+        return Estimate(float(pressure(ambient.interval(0.95)[1], drop.value)), math.nan, "core_pressure", bound="upper")
     value = float(pressure(ambient.value, drop.value))
-    if drop.bound is not None or not math.isfinite(drop.uncertainty):
-        return Estimate(value, math.nan, "core_pressure", bound="upper" if drop.bound else None)
+    if not math.isfinite(drop.uncertainty):
+        return Estimate(value, math.nan, "core_pressure")
     step = max(1e-4 * drop.value, 1e-9)
     slope = abs(float(pressure(ambient.value, drop.value + step) - pressure(ambient.value, drop.value - step))) / (
         2 * step

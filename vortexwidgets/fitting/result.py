@@ -15,7 +15,7 @@ from vortexwidgets.fitting.limits import Profile, null_chi_square, of_nonlinear,
 from vortexwidgets.fitting.problem import CENTRE_X, CENTRE_Y, CORE_RADIUS, SHAPE, Background, Problem
 from vortexwidgets.fitting.separable import SHAPE_BOUNDS, Solution
 from vortexwidgets.formatting import format_number
-from vortexwidgets.uncertainty import PROBABILITIES, Estimate
+from vortexwidgets.uncertainty import PROBITS, Estimate
 
 if TYPE_CHECKING:
     from vortexwidgets.models.model import VortexModel
@@ -27,6 +27,7 @@ Loss = Literal["linear", "huber", "soft_l1"]
 
 # A core radius beyond these multiples of the nearest and the farthest sample is no longer seen by the survey.
 _TOO_SMALL, _TOO_LARGE = 1e-3, 1e3
+_PROBITS = np.array(PROBITS)
 _SUSPECT = 0.2  # relative standard uncertainty from which one-sidedness is looked for
 _NO_VORTEX = 1e-3  # chance at which the drop of chi-square by a vortex would be noise
 
@@ -284,11 +285,13 @@ class Fit:
     def estimate(self, name: str) -> Estimate:
         """A parameter with its standard uncertainty and its 95 % limits, as an Estimate."""
         value, uncertainty = self.value(name), self.uncertainty(name)
+        if math.isnan(value) and not self._is_seen:
+            return Estimate(math.nan, math.nan, _quantity(name))
         low, high = self.interval(name)
         if math.isnan(value):
-            bound: Literal["lower", "upper"] = "lower" if low > 0.0 else "upper"
-            edge = low if bound == "lower" else high
-            return Estimate(edge if math.isfinite(edge) else math.nan, math.nan, _quantity(name), bound=bound)
+            if low > 0.0:
+                return Estimate(low, math.nan, _quantity(name), bound="lower")
+            return Estimate(high if math.isfinite(high) else math.nan, math.nan, _quantity(name), bound="upper")
         return Estimate(
             value,
             uncertainty,
@@ -498,19 +501,15 @@ class Fit:
 
 def two_sided_quantiles(value: float, low: float, high: float) -> tuple[float, ...] | None:
     """Quantiles of a distribution that has a median and 95 % limits: normal on each side, in the logarithm if positive."""
-    from statistics import NormalDist
-
     if not (math.isfinite(low) and math.isfinite(high) and low < value < high):
         return None
-    normal = NormalDist()
-    factor = normal.inv_cdf(0.975)
-    probit = np.array([normal.inv_cdf(p) for p in PROBABILITIES])
+    factor = 1.959963984540054  # 97.5 % point of the normal distribution
     if low > 0.0:
         below, above = math.log(value / low) / factor, math.log(high / value) / factor
-        table = value * np.exp(probit * np.where(probit < 0.0, below, above))
+        table = value * np.exp(_PROBITS * np.where(_PROBITS < 0.0, below, above))
     else:
         below, above = (value - low) / factor, (high - value) / factor
-        table = value + probit * np.where(probit < 0.0, below, above)
+        table = value + _PROBITS * np.where(_PROBITS < 0.0, below, above)
     return tuple(table.tolist())
 
 

@@ -82,8 +82,7 @@ class Solution:
     def inverse(self) -> list[list[float]]:
         """Inverse of `normal` as rows; infinite where a parameter does not matter."""
         factor = self._factors
-        lower: list[list[float]] = []
-        _factor(self._products, [0.0] * len(factor), lower, [], len(factor))
+        lower, _ = _factored(self._products, [0.0] * len(factor))
         return [
             [value / (f * g) for value, g in zip(row, factor, strict=True)]
             for row, f in zip(_inverted(lower), factor, strict=True)
@@ -152,7 +151,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
         steps += 1
         step, decrement = state.step, state.decrement
         if len(here) > SHAPE and (stuck := _at_bounds(here, free, step)):
-            step, decrement = _step_without(state, stuck, len(free))
+            step, decrement = _step_without(state, stuck)
         noise = unit * state.chi_square
         quadratic = decrement < _QUADRATIC * noise
         if decrement <= _ROUNDING * problem.samples.power or (quadratic and decrement > 0.25 * last):
@@ -170,7 +169,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
             converged = True
             break
         if damping:
-            step = _damped(state, damping, len(free))
+            step = _damped(state, damping)
         trial = _moved(here, free, step)
         new = _state(problem, trial, free, tie)
         if new.chi_square <= state.chi_square + _EPSILON * problem.samples.power or decrement < _LEVEL * noise:
@@ -263,8 +262,7 @@ def _state(problem: Problem, here: list[float], free: tuple[int, ...], tie: Tie 
         _factor(products, overlap, lower, half, len(overlap))
     chi_square -= sum([value * value for value in half[:eliminated]])
     decrement = sum([value * value for value in half[eliminated:]])
-    solved = _back(lower, half)
-    step = [value / strength for value in solved[eliminated:]] if strength else [0.0] * len(free)
+    step = _relative(_back(lower, half)[eliminated:], strength)
     return _State(rows, products, overlap, eliminated, lower, half, strength, step, chi_square, decrement)
 
 
@@ -330,17 +328,37 @@ def _back(lower: list[list[float]], half: list[float]) -> list[float]:
     return result
 
 
-def _damped(state: _State, damping: float, free: int) -> list[float]:
+def _damped(state: _State, damping: float) -> list[float]:
     """The step with the diagonal of the nonlinear parameters raised (Levenberg-Marquardt)."""
     products = [list(row) for row in state.products]
-    for i in range(len(products) - free, len(products)):
+    for i in range(state.eliminated, len(products)):
         products[i][i] *= 1.0 + damping
-    lower, half = _factor(products, state.overlap, 0, len(products), [], [])
-    return (
-        [value / state.strength for value in _back(lower, half)[len(products) - free :]]
-        if state.strength
-        else [0.0] * free
+    lower, half = _factored(products, state.overlap)
+    return _relative(_back(lower, half)[state.eliminated :], state.strength)
+
+
+def _step_without(state: _State, stuck: list[int]) -> tuple[list[float], float]:
+    """Step and promised decrease with some nonlinear parameters held."""
+    size, eliminated = len(state.overlap), state.eliminated
+    keep = [row for row in range(size) if row - eliminated not in stuck]
+    lower, half = _factored(
+        [[state.products[row][column] for column in keep] for row in keep], [state.overlap[row] for row in keep]
     )
+    solved = dict(zip(keep, _back(lower, half), strict=True))
+    step = _relative([solved.get(row, 0.0) for row in range(eliminated, size)], state.strength)
+    return step, sum([value * value for value in half[eliminated:]])
+
+
+def _factored(matrix: list[list[float]], right: list[float]) -> tuple[list[list[float]], list[float]]:
+    lower: list[list[float]] = []
+    half: list[float] = []
+    _factor(matrix, right, lower, half, len(right))
+    return lower, half
+
+
+def _relative(step: list[float], strength: float) -> list[float]:
+    """From a step times the strength to a relative step."""
+    return [value / strength for value in step] if strength else [0.0] * len(step)
 
 
 def _ratio(step: list[float], last: list[float]) -> float:
@@ -379,16 +397,3 @@ def _at_bounds(here: list[float], free: tuple[int, ...], step: list[float]) -> l
         if index >= SHAPE
         and ((here[index] >= high and step[position] > 0.0) or (here[index] <= low and step[position] < 0.0))
     ]
-
-
-def _step_without(state: _State, stuck: list[int], free: int) -> tuple[list[float], float]:
-    """Step and promised decrease with some nonlinear parameters held."""
-    eliminated = state.eliminated
-    keep = [row for row in range(len(state.overlap)) if row - eliminated not in stuck]
-    products = [[state.products[row][column] for column in keep] for row in keep]
-    lower: list[list[float]] = []
-    half: list[float] = []
-    _factor(products, [state.overlap[row] for row in keep], lower, half, len(keep))
-    solved = dict(zip(keep, _back(lower, half), strict=True))
-    step = [solved.get(eliminated + k, 0.0) / state.strength if state.strength else 0.0 for k in range(free)]
-    return step, sum([value * value for value in half[eliminated:]])
