@@ -128,15 +128,16 @@ def test_a_disagreement_between_data_and_models_is_a_warning():
 
 @pytest.mark.parametrize(("drop", "excess"), [(5000.0, 1.7), (8300.0, 2.9), (21500.0, 7.4)])
 def test_a_gas_expands_on_its_way_to_the_axis(drop, excess):
-    """Incompressible radial equilibrium is this many per cent too deep at these drops in air (derived, γ = 1.4)."""
+    """The true drop is this many per cent of it smaller than that at constant density, in air (derived, γ = 1.4)."""
     pressure = core_pressure_of(Estimate(drop, 1.0), Estimate(101325.0, 0.0), heat_capacity_ratio=1.4)
-    assert 100 * (drop / (101325.0 - pressure.value) - 1) == pytest.approx(excess, abs=0.06)
+    assert 100 * (1 - (101325.0 - pressure.value) / drop) == pytest.approx(excess, abs=0.06)
 
 
 def test_a_lower_bound_of_the_drop_is_an_upper_bound_of_the_pressure():
-    pressure = core_pressure_of(Estimate(5000.0, 100.0, bound="lower"), Estimate(101325.0, 10.0))
+    pressure = core_pressure_of(Estimate(5000.0, math.nan, bound="lower"), Estimate(101325.0, 10.0))
     assert pressure.bound == "upper"
-    assert pressure.value == 96325.0
+    # 1.96 standard uncertainties of the reference on the safe side.
+    assert pressure.value == pytest.approx(96325.0 + 19.6, abs=0.01)
 
 
 def test_core_pressure_keeps_the_budget_and_adds_the_reference():

