@@ -320,7 +320,7 @@ Given = float | tuple[float, float] | Estimate
 """What a person may give: a number, (value, standard uncertainty), or an Estimate."""
 
 
-def as_estimate(given: Given, quantity: str) -> Estimate:
+def as_estimate(given: Given, quantity: str, *, name: str = "") -> Estimate:
     """Turn what a person gave into an Estimate of a quantity, checked.
 
     Parameters
@@ -329,6 +329,8 @@ def as_estimate(given: Given, quantity: str) -> Estimate:
         Number, number with its standard uncertainty, or an Estimate of the same unit. [SI]
     quantity : str
         Key of the quantity; empty for a plain number of any size.
+    name : str
+        What a refusal calls it; the quantity by default.
 
     Returns
     -------
@@ -340,7 +342,7 @@ def as_estimate(given: Given, quantity: str) -> Estimate:
         If the value is outside the quantity's range, the uncertainty is negative or not finite, the pair is no pair,
         or the Estimate is of another unit.
     """
-    name = quantity or "the value"
+    name = name or quantity or "the value"
     if isinstance(given, Estimate):
         own = given.quantity
         if own and quantity and quantity_named(own).unit != quantity_named(quantity).unit:
@@ -353,7 +355,7 @@ def as_estimate(given: Given, quantity: str) -> Estimate:
         if len(given) != 2:
             raise ValueError(f"{name} takes a number or (value, standard uncertainty), got {len(given)} numbers.")
         value, uncertainty = (
-            _number(part, quantity, label) for part, label in zip(given, ("", "the uncertainty of "), strict=True)
+            _number(part, label + name) for part, label in zip(given, ("", "the uncertainty of "), strict=True)
         )
         if not math.isfinite(uncertainty) or uncertainty < 0.0:
             got = f"{uncertainty:g} {quantity_named(quantity).unit if quantity else ''}".rstrip()
@@ -363,14 +365,13 @@ def as_estimate(given: Given, quantity: str) -> Estimate:
             )
         estimate = Estimate(value, uncertainty, quantity)
     else:
-        estimate = Estimate(_number(given, quantity, ""), 0.0, quantity)
+        estimate = Estimate(_number(given, name), 0.0, quantity)
     if quantity:
         check(quantity, estimate.value)
     return estimate
 
 
-def _number(given: Any, quantity: str, label: str) -> float:
-    name = f"{label}{quantity or 'the value'}"
+def _number(given: Any, name: str) -> float:
     if isinstance(given, str | bytes | bool) or not hasattr(given, "__float__") or getattr(given, "ndim", 0) != 0:
         raise ValueError(f"{name} must be a number or (value, standard uncertainty), got {given!r:.60}.")
     return float(given)
@@ -584,7 +585,8 @@ def _column(call: Callable[[Sequence[Any]], Any], columns: Sequence[Any], count:
 def _budget(names: Sequence[str], inputs: Sequence[Estimate], shares: FloatArray) -> tuple[Contribution, ...]:
     """One entry per input; an input that knows its own parts keeps them where they add up."""
     entries = []
-    for name, item, share in zip(names, inputs, shares.tolist(), strict=True):
+    labels = [name.replace("_", " ") for name in names]
+    for name, item, share in zip(labels, inputs, shares.tolist(), strict=True):
         total = math.sqrt(sum(part.uncertainty**2 for part in item.budget))
         if len(item.budget) > 1 and item.uncertainty > 0.0 and math.isclose(total, item.uncertainty, rel_tol=1e-6):
             entries += [Contribution(f"{name}: {part.name}", share * part.uncertainty / total) for part in item.budget]
