@@ -7,7 +7,8 @@ import pytest
 from vortexwidgets.uncertainty import Estimate
 
 import vortexwidgets as vx
-from vortexwidgets.core_pressure import combined_drop, core_pressure_of, data_drop, mean_swirl
+from vortexwidgets.core_pressure import combined_drop, core_pressure_of, mean_swirl
+from vortexwidgets.data_drop import data_drop
 
 UNIT = vx.Vortex("lamb-oseen", circulation=2 * math.pi, core_radius=1.0)
 

@@ -13,24 +13,24 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from vortexwidgets import record
+from vortexwidgets.circumstances import fluid_of, instrument_of, site_of
 from vortexwidgets.consequences import assess_all
 from vortexwidgets.consequences.consequence import Consequence, Criterion
 from vortexwidgets.core_pressure import (
     Core,
     CoreDrop,
-    DataDrop,
     circulation_at,
     combined_drop,
     core_pressure_of,
-    data_drop,
     named_drops,
     share_beyond,
     total_pressure_deficit,
 )
+from vortexwidgets.data_drop import DataDrop, data_drop
 from vortexwidgets.fitting.fit import Settings, fit_survey, settings_for
 from vortexwidgets.fitting.ranking import Ranking, rank_models
 from vortexwidgets.fitting.result import FitError, Loss, Uncertainties
-from vortexwidgets.fluids import Fluid, Site, fluid_named
+from vortexwidgets.fluids import Fluid, Site
 from vortexwidgets.formatting import format_estimate, format_number, table
 from vortexwidgets.models.agreement import Agreement, AgreementRow, check_agreement
 from vortexwidgets.models.vortex import Vortex
@@ -46,7 +46,6 @@ if TYPE_CHECKING:
 
 _CAUTION_BEYOND, _UNDETERMINED_BEYOND = 0.10, 0.30  # shares of the drop that no station saw
 _COMPRESSIBLE = 0.02  # of the ambient pressure
-_ASSUMED_TEMPERATURE = (15.0, 5.0)  # °C, where a fluid is named without one; its doubt is carried
 
 NO_MODEL_FITS = "No model fits: the data reject every profile that was tried."
 
@@ -281,9 +280,9 @@ def appraise(
         If facts contradict each other or lie outside a fluid's range.
     """
     assumptions: list[str] = []
-    fluid = fluid if fluid is not None else _fluid_of(survey, assumptions)
-    site = site if site is not None else _site_of(survey)
-    instrument = instrument if instrument is not None else _instrument_of(survey)
+    fluid = fluid if fluid is not None else fluid_of(survey, assumptions)
+    site = site if site is not None else site_of(survey)
+    instrument = instrument if instrument is not None else instrument_of(survey)
     screened = screen(survey).survey
     settings = settings_for(
         screened, instrument=instrument, background=background, uncertainties=uncertainties, loss=loss
@@ -392,60 +391,6 @@ def _rank(survey: Survey, models: Sequence[str | VortexModel] | None, settings: 
         uncertainties=settings.uncertainties,
         loss=settings.loss,
     )
-
-
-# What the survey's own facts say ------------------------------------------------------------------------------------
-
-
-def _fluid_of(survey: Survey, assumptions: list[str]) -> Fluid:
-    facts = survey.facts
-    name = facts.get("fluid")
-    temperature = facts.get("temperature")
-    options: dict[str, Any] = {}
-    if isinstance(temperature, Estimate):
-        options["temperature"] = (temperature.value - 273.15, temperature.uncertainty)
-    elif isinstance(temperature, (int, float)):
-        options["temperature"] = float(temperature) - 273.15
-    else:
-        options["temperature"] = _ASSUMED_TEMPERATURE
-    if name is None:
-        name = "water"
-        assumptions.append("The fluid was not stated: water is taken. Pressures scale with density; give the fluid.")
-    if temperature is None:
-        assumptions.append(
-            f"The temperature was not stated: 15 ± 5 °C is taken for the {name}, with its doubt carried."
-        )
-    pressure = facts.get("ambient_pressure", facts.get("surface_pressure"))
-    if pressure is not None:
-        options["pressure"] = pressure
-    if "salinity" in facts:
-        options["salinity"] = facts["salinity"]
-    return fluid_named(str(name), **options)
-
-
-def _site_of(survey: Survey) -> Site:
-    facts = survey.facts
-    names = ("ambient_pressure", "surface_pressure", "depth", "gravity", "orientation", "reference_radius", "translation_speed",
-             "tensile_strength", "gas_saturation", "inception", "elevation", "submergence")  # fmt: skip
-    known: dict[str, Any] = {name: facts[name] for name in names if name in facts}
-    if "free_stream" in facts:
-        known["speed"] = facts["free_stream"]
-    for name in ("reference_radius", "gravity", "gas_saturation"):
-        if isinstance(known.get(name), Estimate):
-            known[name] = known[name].value
-    return Site(**known)
-
-
-def _instrument_of(survey: Survey) -> Instrument | None:
-    facts = survey.facts
-    known: dict[str, Any] = {}
-    for name in ("wander", "probe_width"):
-        value = facts.get(name)
-        if value is not None:
-            known[name] = value.value if isinstance(value, Estimate) else float(value)
-    if "averaging" in facts:
-        known["averaging"] = str(facts["averaging"])
-    return Instrument(**known) if known else None
 
 
 # Sentences ----------------------------------------------------------------------------------------------------------
