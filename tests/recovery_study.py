@@ -13,10 +13,10 @@ import warnings
 from dataclasses import dataclass
 
 import numpy as np
-from vortexwidgets.uncertainty import Estimate
 
 import vortexwidgets as vx
 from vortexwidgets.core_pressure import combined_drop
+from vortexwidgets.uncertainty import Estimate
 
 CORE_RADIUS = 0.012
 TRUTHS = {
@@ -151,9 +151,12 @@ def main(runs):
     warnings.simplefilter("ignore")
     print("# Recovery study\n")
     print(
-        f"Share of {runs} seeded runs per cell whose 95 % limits contain the truth, made by `python tests/recovery_study.py {runs}`.\n"
-        "Each run is an invented traverse of 60 points from -7 to 7 core radii with both in-plane components, an unknown centre\n"
-        "(within half a core radius along the line, 0.3 across), an unknown uniform background (to 5 % of the peak) and Gaussian\n"
+        f"Share of {runs} seeded runs per cell whose 95 % limits contain the truth, made by `python "
+        f"tests/recovery_study.py {runs}`.\n"
+        "Each run is an invented traverse of 60 points from -7 to 7 core radii with both in-plane components, an "
+        "unknown centre\n"
+        "(within half a core radius along the line, 0.3 across), an unknown uniform background (to 5 % of the peak) "
+        "and Gaussian\n"
         "noise. Undetermined and failed fits count as misses. The Vatistas exponent is fitted.\n"
     )
     print("## The true model is known\n")
@@ -173,9 +176,12 @@ def main(runs):
             label = "outside the catalogue" if key == "outside" else key
             print(f"| {label} | {100 * noise:g} | {100 * held:.1f} % | {100 * answered:.1f} % |", flush=True)
     print(
-        "\n'Outside the catalogue' is the sum of two Lamb-Oseen vortices with cores of 0.7 and 1.6 times the nominal one. With little\n"
-        "noise every model is rejected and no number is given, which counts as a miss; with much noise a wrong model passes and its\n"
-        "limits are too narrow. Neither is hidden: the envelope over the models that are not rejected is reported beside the limits."
+        "\n'Outside the catalogue' is the sum of two Lamb-Oseen vortices with cores of 0.7 and 1.6 times the nominal "
+        "one. With little\n"
+        "noise every model is rejected and no number is given, which counts as a miss; with much noise a wrong model "
+        "passes and its\n"
+        "limits are too narrow. Neither is hidden: the envelope over the models that are not rejected is reported "
+        "beside the limits."
     )
 
 

@@ -4,11 +4,11 @@ import math
 
 import numpy as np
 import pytest
-from vortexwidgets.uncertainty import Estimate
 
 import vortexwidgets as vx
 from vortexwidgets.core_pressure import combined_drop, core_pressure_of, mean_swirl
 from vortexwidgets.data_drop import data_drop
+from vortexwidgets.uncertainty import Estimate
 
 UNIT = vx.Vortex("lamb-oseen", circulation=2 * math.pi, core_radius=1.0)
 

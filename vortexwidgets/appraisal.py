@@ -305,22 +305,23 @@ def appraise(
         limit = last_radius
         reference = f"relative to the pressure at the last station, {format_number(last_radius, 'm')} from the axis"
         cautions.append(
-            f"{100 * beyond:.0f} % of the drop would come from beyond the survey, so the drop is given relative to the last "
+            f"{100 * beyond:.0f} % of the drop would come from beyond the survey, so the drop is given relative to "
+            "the last "
             "station; measure farther out for the drop from the far field."
         )
     elif beyond > _CAUTION_BEYOND:
         cautions.append(
-            f"{100 * beyond:.0f} % of the drop comes from beyond the last station, where only the model speaks; measure farther out."
+            f"{100 * beyond:.0f} % of the drop comes from beyond the last station, where only the model speaks; "
+            "measure farther out."
         )
     if not supported:
         drop, envelope = Estimate(math.nan, math.nan, "core_pressure_drop"), (math.nan, math.nan)
         cautions.insert(0, f"{NO_MODEL_FITS} The closest is {best.model.name}: {best.reason} The residuals are shown.")
     else:
         drop, envelope = combined_drop(supported, density=fluid.density, gain=survey.velocity_gain, beyond=limit)
-    if missed and drop.bound is None:
-        drop = Estimate(
-            drop.value, drop.uncertainty, drop.quantity, budget=drop.budget, quantiles=drop.quantiles, bound="lower"
-        )
+    centred = drop
+    if missed and drop.is_determined:
+        drop = Estimate(drop.interval(0.95)[0], math.nan, drop.quantity, bound="lower")
     from_station = site.reference_radius is None and limit is not None
     gas = fluid.heat_capacity_ratio
     pressure = None
@@ -328,7 +329,8 @@ def appraise(
         pressure = core_pressure_of(drop, ambient, heat_capacity_ratio=gas)
     if gas is not None and ambient is not None and drop.value > _COMPRESSIBLE * ambient.value:
         cautions.append(
-            f"The drop is {100 * drop.value / ambient.value:.1f} % of the ambient pressure: the gas expands, and the core pressure "
+            f"The drop is {100 * drop.value / ambient.value:.1f} % of the ambient pressure: the gas expands, and the "
+            "core pressure "
             "is taken through the isentropic relation instead of the constant-density drop."
         )
     peak_swirl = best.fit.estimate("peak_swirl")
@@ -409,7 +411,8 @@ def _survey_cautions(survey: Survey, ranking: Ranking, *, missed: bool) -> list[
     best = ranking.best
     if missed:
         cautions.append(
-            "One component was measured and no miss distance stated, so the line may have missed the axis: the drop is a lower "
+            "One component was measured and no miss distance stated, so the line may have missed the axis: the drop "
+            "is a lower "
             "bound. Measure the component along the line, or state the miss distance."
         )
     for text in dict.fromkeys(best.fit._open.values()):
@@ -428,7 +431,8 @@ def _survey_cautions(survey: Survey, ranking: Ranking, *, missed: bool) -> list[
                 f"(chi² falls by {(best.fit.chi_square - wider.chi_square) / unit:.0f}); consider background='uniform'."
             )
     cautions.append(
-        "An intrusive probe can move or burst a core, seeding can leave it empty, a hot wire reads speed and not a component, "
+        "An intrusive probe can move or burst a core, seeding can leave it empty, a hot wire reads speed and not a "
+        "component, "
         "and tunnel walls have images (common practice)."
     )
     return cautions

@@ -105,7 +105,8 @@ def mean_swirl(vortex: Vortex, radius: npt.ArrayLike, *, wander: float) -> Float
     Notes
     -----
     Gaussian average of the velocity vector over the plane,
-    :math:`\bar v(r) = \int_0^\infty v(s)\,(s/\sigma^2)\,e^{-(r^2+s^2)/2\sigma^2} I_1(rs/\sigma^2)\,ds`, for any profile.
+    :math:`\bar v(r) = \int_0^\infty v(s)\,(s/\sigma^2)\,e^{-(r^2+s^2)/2\sigma^2} I_1(rs/\sigma^2)\,ds`, for any
+    profile.
 
     References
     ----------
@@ -142,8 +143,8 @@ def core_drops(vortex: Vortex, *, density: float, wander: float = 0.0) -> dict[s
     Returns
     -------
     dict
-        "instantaneous vortex": on the moving axis, what a bubble feels; "mean pressure at a fixed point": what a wall tap
-        or a slow probe reads at the mean centre; "mean profile": what integrating the mean swirl gives.
+        "instantaneous vortex": on the moving axis, what a bubble feels; "mean pressure at a fixed point": what a wall
+        tap or a slow probe reads at the mean centre; "mean profile": what integrating the mean swirl gives.
 
     Notes
     -----
@@ -287,8 +288,8 @@ def core_pressure_of(drop: Estimate, ambient: Estimate, *, heat_capacity_ratio: 
 
     Notes
     -----
-    Gas: p(0) = p∞ [1 - (γ-1)/γ · Δp/p∞]^(γ/(γ-1)), cyclostrophic balance with p/ρ^γ constant. It reaches a vacuum at a finite
-    drop; beyond that the pressure is given as zero.
+    Gas: p(0) = p∞ [1 - (γ-1)/γ · Δp/p∞]^(γ/(γ-1)), cyclostrophic balance with p/ρ^γ constant. It reaches a vacuum at a
+    finite drop; beyond that the pressure is given as zero.
     """
 
     def pressure(far: FloatArray | float, fall: FloatArray | float) -> FloatArray:
@@ -352,8 +353,8 @@ def circulation_at(fit: Fit, radius: float) -> Estimate:
 def total_pressure_deficit(survey: Survey, fit: Fit, drop: Estimate, *, density: Estimate) -> Estimate | None:
     """Total pressure far away less total pressure on the axis, Δp + ½ρ(W∞² - W0²); None without an axial velocity. [Pa]
 
-    W0 is the mean over the samples within half a peak radius (the nearest three where there are fewer), W∞ that beyond three
-    peak radii. The static drop itself does not depend on the axial velocity.
+    W0 is the mean over the samples within half a peak radius (the nearest three where there are fewer), W∞ that beyond
+    three peak radii. The static drop itself does not depend on the axial velocity.
     """
     chosen = survey.axial
     if not chosen.any() or not math.isfinite(drop.value):

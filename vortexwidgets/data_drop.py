@@ -46,13 +46,13 @@ def data_drop(survey: Survey, fit: Fit, *, density: Estimate, model_drop: Estima
     Returns
     -------
     DataDrop
-        With its shares: the measured range Σ (v² - u²) Δln r, a solid-body cap ½ρv² within the innermost station, and the tail
-        ½ρv² of constant circulation beyond the outermost one.
+        With its shares: the measured range Σ (v² - u²) Δln r, a solid-body cap ½ρv² within the innermost station, and
+        the tail ½ρv² of constant circulation beyond the outermost one.
 
     Notes
     -----
-    Noise adds its variance to v², so u² is taken off. Samples are averaged in rings first. The cap is the smallest drop a
-    monotonic swirl can have there.
+    Noise adds its variance to v², so u² is taken off. Samples are averaged in rings first. The cap is the smallest
+    drop a monotonic swirl can have there.
     """
     radius, swirl, noise = _swirl_of_samples(survey, fit)
     ring_r, ring_v, ring_u = _rings(radius, swirl, noise)
@@ -96,7 +96,8 @@ def _comparison(data: Estimate, cap: float, model: Estimate) -> list[str]:
     share = cap / data.value if data.value > 0.0 else math.nan
     if share > 0.3:
         sentences.append(
-            f"{100 * share:.0f} % of the data-only drop is the cap towards the axis, which no sample measured; it is a least value."
+            f"{100 * share:.0f} % of the data-only drop is the cap towards the axis, which no sample measured; it is "
+            "a least value."
         )
     if model.bound is None and math.isfinite(model.uncertainty):
         off = data.value - model.value
@@ -104,7 +105,8 @@ def _comparison(data: Estimate, cap: float, model: Estimate) -> list[str]:
         if abs(off) > max(3.0 * doubt, 0.08 * model.value):
             side = "above" if off > 0.0 else "below"
             sentences.append(
-                f"Warning: the data-only drop lies {100 * abs(off) / model.value:.0f} % {side} that of the models, more than "
+                f"Warning: the data-only drop lies {100 * abs(off) / model.value:.0f} % {side} that of the models, "
+                "more than "
                 "three combined standard uncertainties; look at the residuals near the axis before using either."
             )
         else:

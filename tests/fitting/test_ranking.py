@@ -32,8 +32,9 @@ def test_profiles_with_one_swirl_are_ranked_once_under_all_their_names():
 def test_the_outer_flow_does_not_reject_a_core_almost_twice_as_deep():
     """40 points from 1.2 to 6 core radii, noise 3 % of peak, truth Lamb-Oseen.
 
-    In one such survey Kaufmann fitted with chi² = 50 on 38, was not rejected (p = 0.09), was 1.88 times too deep, and had an
-    AICc weight under 1 % (derived, recomputed independently); another draw of the noise moves the ratio by a tenth.
+    In one such survey Kaufmann fitted with chi² = 50 on 38, was not rejected (p = 0.09), was 1.88 times too deep, and
+    had an AICc weight under 1 % (derived, recomputed independently); another draw of the noise moves the ratio by a
+    tenth.
     """
     vortex, survey = outer_survey()
     ranking = vx.rank_models(survey, ["lamb-oseen", "kaufmann"])

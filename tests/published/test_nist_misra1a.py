@@ -1,10 +1,10 @@
 """NIST StRD Misra1a read as a Lamb-Oseen survey.
 
-With x = r² and y = circulation within r, y = b1 (1 - exp(-b2 x)) is the Lamb-Oseen circulation law, so the certified values fix
-the circulation b1, the core radius b2^(-1/2) and both standard uncertainties.
+With x = r² and y = circulation within r, y = b1 (1 - exp(-b2 x)) is the Lamb-Oseen circulation law, so the certified
+values fix the circulation b1, the core radius b2^(-1/2) and both standard uncertainties.
 
-Source: National Institute of Standards and Technology, Statistical Reference Datasets, nonlinear regression, Misra1a (public
-domain). Provenance: opened.
+Source: National Institute of Standards and Technology, Statistical Reference Datasets, nonlinear regression, Misra1a
+(public domain). Provenance: opened.
 """
 
 import math
@@ -38,7 +38,11 @@ def fit():
         ("circulation", CIRCULATION, CIRCULATION_UNCERTAINTY),
         ("core_radius", CORE_RADIUS, CORE_RADIUS_UNCERTAINTY),
         # α = 1.25643120862617 from e^α = 1 + 2α (derived); the certified value is that of the core radius.
-        ("peak_radius", math.sqrt(1.25643120862617) * CORE_RADIUS, math.sqrt(1.25643120862617) * CORE_RADIUS_UNCERTAINTY),
+        (
+            "peak_radius",
+            math.sqrt(1.25643120862617) * CORE_RADIUS,
+            math.sqrt(1.25643120862617) * CORE_RADIUS_UNCERTAINTY,
+        ),
     ],
 )
 def test_certified_values_to_eight_digits(fit, name, value, uncertainty):

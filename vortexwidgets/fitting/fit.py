@@ -247,7 +247,8 @@ def _wider(problem: Problem, free: tuple[int, ...], starts: list[list[float]]) -
 def _refuse_failure(fit: Fit) -> None:
     if not fit.converged:
         raise FitError(
-            f"{Status.STOPPED.value} What it had: {', '.join(f'{n} = {v:.4g}' for n, v in zip(fit.names, fit._best, strict=True))}."
+            f"{Status.STOPPED.value} What it had: "
+            f"{', '.join(f'{n} = {v:.4g}' for n, v in zip(fit.names, fit._best, strict=True))}."
             " Give a start, fix a parameter, or choose another model.",
             fit,
         )

@@ -138,9 +138,10 @@ def rank_models(
     Notes
     -----
     With stated uncertainties AICc = chi² + 2k + 2k(k+1)/(N-k-1), and a profile is rejected when its chi-square has a
-    chance below 0.01. With unknown scatter AICc = N ln(RSS/N) + 2(k+1) + 2(k+1)(k+2)/(N-k-2), and the test is relative: a
-    profile is rejected when its sum of squares is larger than the smallest one by more than the F distribution allows at
-    0.01; or, where positions were repeated, when the lack of fit exceeds the scatter of the repeats.
+    chance below 0.01. With unknown scatter AICc = N ln(RSS/N) + 2(k+1) + 2(k+1)(k+2)/(N-k-2), and the test is
+    relative: a profile is rejected when its sum of squares is larger than the smallest one by more than the F
+    distribution allows at 0.01; or, where positions were repeated, when the lack of fit exceeds the scatter of the
+    repeats.
 
     References
     ----------
@@ -184,7 +185,8 @@ def distinct_profiles(models: Sequence[str | VortexModel] | None = None) -> list
         for model in chosen:
             if not model.ranked:
                 raise ValueError(
-                    f"{model.name} cannot be ranked: it has no core radius or no finite pressure on the axis. Leave it out."
+                    f"{model.name} cannot be ranked: it has no core radius or no finite pressure on the axis. Leave "
+                    "it out."
                 )
     if not chosen:
         raise ValueError("No model to rank; name at least one, such as 'lamb-oseen'.")
@@ -241,7 +243,8 @@ def _criterion(*, known: bool) -> str:
         )
     return (
         "AICc with the scatter estimated from the residuals (N ln(RSS/N) + ...); "
-        f"a model is rejected where its residuals exceed those of the best model, or of repeats, at a chance below {REJECTION}."
+        "a model is rejected where its residuals exceed those of the best model, or of repeats, at a chance below "
+        f"{REJECTION}."
     )
 
 

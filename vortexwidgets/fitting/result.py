@@ -308,8 +308,8 @@ class Fit:
     def core_pressure_drop(self, density: float) -> Estimate:
         """Pressure far away less pressure on the axis, of this model alone. [Pa]
 
-        The uncertainty is the fit's; gain, density and the choice of model are added by `appraise`. Where the survey does
-        not enter the core the estimate is a lower bound.
+        The uncertainty is the fit's; gain, density and the choice of model are added by `appraise`. Where the survey
+        does not enter the core the estimate is a lower bound.
         """
         low, high = self._limits_of("core_pressure_drop", 0.95)
         constant = self.model.centre_pressure(*self._shape)
