@@ -129,7 +129,7 @@ _ALL = (
              (0.0, 1e5), _PRESSURE, True, "give a tension as a positive pressure, 0 Pa when none is known"),
     # The fluid
     Quantity("temperature", r"\vartheta", "T", "K", "Temperature of the fluid", POSITIVE, (273.15, 313.15),
-             {"SI": "degC", "US": "degF"}, remedy="give the temperature with its unit"),
+             {"SI": "°C", "US": "°F"}, remedy="give the temperature with its unit"),
     Quantity("density", r"\rho", "ρ", "kg/m³", "Density of the fluid", POSITIVE, (1.0, 1100.0),
              {"SI": "kg/m³", "US": "lb/ft³"}, remedy="give the density in kg/m³"),
     Quantity("kinematic_viscosity", r"\nu", "ν", "m²/s", "Kinematic viscosity of the fluid", POSITIVE, (1e-7, 1e-4),
