@@ -72,6 +72,14 @@ def test_appraise_says_what_it_read_and_options_replace_facts(tmp_path, capsys):
     assert (tmp_path / "out.html").stat().st_size > 1000
 
 
+def test_a_low_absolute_pressure_is_used_when_it_is_confirmed(tmp_path, capsys):
+    arguments = ["appraise", str(STRANGERS / "coverage_factor_two.csv"), "--fluid", "water", "--temperature", "15"]
+    arguments += ["--ambient-pressure", "40 kPa"]
+    assert main(arguments) == 2
+    assert "confirm_absolute" in capsys.readouterr().err
+    assert "40" in run(capsys, *arguments, "--confirm-absolute")
+
+
 def test_units_on_the_command_line(tmp_path, capsys):
     path = tmp_path / "bench.csv"
     text = (STRANGERS / "plain.csv").read_text(encoding="utf-8").replace("position [mm]", "position")

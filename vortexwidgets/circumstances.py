@@ -41,6 +41,10 @@ def site_of(survey: Survey) -> Site:
     known: dict[str, Any] = {name: facts[name] for name in names if name in facts}
     if "free_stream" in facts:
         known["speed"] = facts["free_stream"]
+    if "free_stream_name" in facts:
+        known["speed_name"] = facts["free_stream_name"]
+    if facts.get("confirm_absolute") == "yes":
+        known["confirm_absolute"] = True
     for name in ("reference_radius", "gravity", "gas_saturation"):
         if isinstance(known.get(name), Estimate):
             known[name] = known[name].value

@@ -132,6 +132,9 @@ def _add_facts(parser: argparse.ArgumentParser) -> None:
     for option, (_, _, unit) in _FACTS.items():
         name = option.replace("_", " ")
         parser.add_argument(f"--{option.replace('_', '-')}", metavar="VALUE", help=f"{name}, bare number in {unit}")
+    parser.add_argument(
+        "--confirm-absolute", action="store_true", help="a pressure below 50 kPa is absolute, not gauge"
+    )
     parser.add_argument("--orientation", choices=("surface", "submerged", "air"), help="what the vortex ends at")
     parser.add_argument("--miss-distance", metavar="VALUE", help="how far the line misses the axis, bare number in m")
     parser.add_argument("--velocity-gain", metavar="VALUE", help="'1.000 ± 0.005' or '0.5 %%': common to all samples")
@@ -222,6 +225,8 @@ def _survey_with_facts(options: argparse.Namespace) -> Survey:
         if text is not None:
             facts[fact] = _about(option, lambda t=text, q=quantity, u=unit: read_quantity(t, q, default_unit=u))
     facts.update({name: getattr(options, name) for name in ("fluid", "orientation", "averaging")})
+    if options.confirm_absolute:
+        facts["confirm_absolute"] = "yes"
     changes: dict[str, Any] = {}
     if options.miss_distance is not None:
         changes["miss_distance"] = _about(

@@ -1,5 +1,4 @@
 import pytest
-from vortexwidgets.uncertainty import Estimate
 
 from vortexwidgets.survey.facts import read_facts
 from vortexwidgets.survey.samples import SurveyError
@@ -13,8 +12,16 @@ def test_facts_are_si_estimates_with_their_uncertainty():
     found = facts("Temperature: 15.0 ± 0.2 degC", "ambient pressure = 101.3 kPa", "probe width [mm]: 1,5").values
     assert found["temperature"].value == pytest.approx(288.15)
     assert found["temperature"].uncertainty == pytest.approx(0.2)
-    assert found["ambient_pressure"] == Estimate(pytest.approx(101300.0), 0.0, "ambient_pressure")
+    assert found["ambient_pressure"].value == pytest.approx(101300.0)
+    assert found["ambient_pressure"].uncertainty == 0.0
     assert found["probe_width"].value == pytest.approx(0.0015)
+
+
+@pytest.mark.parametrize("text", ["40 kPa absolute", "40 kPa (absolute)", "40 kPa abs"])
+def test_a_low_pressure_may_say_that_it_is_absolute(text):
+    found = facts(f"ambient pressure: {text}").values
+    assert found["ambient_pressure"].value == pytest.approx(40e3)
+    assert found["confirm_absolute"] == "yes"
 
 
 def test_words_are_known_words():

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
 import numpy as np
@@ -53,7 +53,7 @@ def assemble(readings: Readings, sha256: str, notes: Sequence[str]) -> Survey:
         notes=(*notes, *readings.facts.notes, *readings.notes),
     )
     known = {name: value for name, value in readings.facts.values.items() if name not in _CONSUMED}
-    make = arguments.pop("make")
+    make: Callable[..., Survey] = arguments.pop("make")
     try:
         return make(provenance=provenance, **readings.common(), **arguments, **_renamed(known))
     except SurveyError as error:
@@ -161,15 +161,14 @@ def _line_components(readings: Readings, place: str) -> tuple[str, float, str | 
     cross = generic or (_COMPONENT_ALONG[across] if _COMPONENT_ALONG[across] in here else None)
     vectors = _picture(readings, axis)
     if cross is None:
-        cross = readings.first("speed", "u", "v", "w")
-        generic = cross
+        cross = generic = next(role for role in ("speed", "u", "v", "w") if role in here)
     if generic is not None:
         sign = _handedness(readings)
     else:
         left = (-vectors[letter][1], vectors[letter][0])
         sign = vectors[across][0] * left[0] + vectors[across][1] * left[1]
         readings.notes.append(f"circulation is counted counter-clockwise, seen against {axis}")
-    taken = {cross}
+    taken: set[str | None] = {cross}
     parallel = next((r for r in ("along", _COMPONENT_ALONG[letter]) if r in here and r not in taken), None)
     taken.add(parallel)
     axial = next((r for r in ("axial", _COMPONENT_ALONG[axis]) if r in here and r not in taken), None)

@@ -162,6 +162,13 @@ def read_facts(comments: Iterable[tuple[int, str]], file: str) -> Facts:
                 f"{written[fact][2]}'; keep one of them."
             )
         written[fact] = (row, key, value)
+    for fact in ("ambient_pressure", "surface_pressure"):
+        if fact in written:
+            row, key, value = written[fact]
+            bare = re.sub(r"\s*\(?\babs(?:olute)?\b\.?\)?\s*$", "", value)
+            if bare != value:  # "40 kPa absolute" is no gauge reading, however low
+                written[fact] = (row, key, bare)
+                others["confirm_absolute"] = "yes"
     values = {fact: _value(fact, key, value, f"{file}, row {row}") for fact, (row, key, value) in written.items()}
     coverage = values.pop("coverage_factor", None)
     if isinstance(coverage, float):

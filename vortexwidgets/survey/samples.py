@@ -32,7 +32,7 @@ FACT_QUANTITIES: dict[str, str] = {
     "ambient_pressure": "ambient_pressure",
     "surface_pressure": "surface_pressure",
     "depth": "depth",
-    "submergence": "depth",
+    "submergence": "submergence",
     "free_stream": "free_stream",
     "elevation": "elevation",
     "gravity": "gravity",
@@ -81,9 +81,9 @@ def own_column(values: ArrayLike, shape: tuple[int, ...], name: str) -> FloatArr
     return array
 
 
-def check_samples(columns: Mapping[str, FloatArray | None], set_aside: int) -> None:
-    """Say what is wrong with the numbers of a survey; `columns` are its fields by name."""
-    columns = {name: values for name, values in columns.items() if values is not None}
+def check_samples(fields: Mapping[str, FloatArray | None], set_aside: int) -> None:
+    """Say what is wrong with the numbers of a survey; `fields` are its columns by name."""
+    columns = {name: values for name, values in fields.items() if values is not None}
     number = columns["velocity"].size
     for name, limit, unit in (("x", FARTHEST, "m"), ("y", FARTHEST, "m"), ("velocity", FASTEST, "m/s")):
         bad = np.flatnonzero(~(np.abs(columns[name]) <= limit))

@@ -127,7 +127,7 @@ def _line_outliers(survey: Survey) -> NDArray[np.intp]:
         noise = _stated_or(survey, order, _noise(position, velocity))
         trend = _theil_sen(position, velocity, neighbours)
         suspect = np.flatnonzero(_ratio(velocity, neighbours, noise, trend) > _LIMIT)
-        found += [int(order[i]) for i in suspect if not _lone_core_station(velocity, i)]
+        found += [int(order[i]) for i in suspect if not _lone_core_station(velocity, int(i))]
     return np.array(sorted(found), dtype=np.intp)
 
 
@@ -186,7 +186,7 @@ def _window(number: int, half: int) -> NDArray[np.intp]:
     """List the 2·half nearest in the row, without the sample itself, shape (number, 2·half)."""
     first = np.clip(np.arange(number) - half, 0, number - 2 * half - 1)
     span = first[:, None] + np.arange(2 * half + 1)
-    return span[span != np.arange(number)[:, None]].reshape(number, 2 * half)
+    return np.asarray(span[span != np.arange(number)[:, None]].reshape(number, 2 * half))
 
 
 def _noise(position: FloatArray, velocity: FloatArray) -> float:

@@ -165,7 +165,11 @@ class Survey:
         components: list[Component] = [(swirl, (0.0, 1.0, 0.0), "swirl"), (axial, (0.0, 0.0, 1.0), "axial")]
         stacked = stacked_columns(distance, np.zeros_like(distance), components, uncertainty, pressure, provenance)
         return cls(
-            geometry="radial", velocity_gain=velocity_gain, position_scale=position_scale, facts=facts, **stacked
+            geometry="radial",
+            velocity_gain=factor_of_one(velocity_gain, "velocity_gain"),
+            position_scale=factor_of_one(position_scale, "position_scale"),
+            facts=facts,
+            **stacked,
         )
 
     @classmethod
@@ -228,8 +232,8 @@ class Survey:
         return cls(
             geometry="traverse",
             miss_distance=None if miss_distance is None else stated_estimate(miss_distance, "miss_distance"),
-            velocity_gain=velocity_gain,
-            position_scale=position_scale,
+            velocity_gain=factor_of_one(velocity_gain, "velocity_gain"),
+            position_scale=factor_of_one(position_scale, "position_scale"),
             facts=facts,
             **stacked,
         )
@@ -288,7 +292,13 @@ class Survey:
             )
         components: list[Component] = [(u, (1.0, 0.0, 0.0), "u"), (v, (0.0, 1.0, 0.0), "v"), (w, (0.0, 0.0, 1.0), "w")]
         stacked = stacked_columns(across.ravel(), up.ravel(), components, uncertainty, pressure, provenance)
-        return cls(geometry="plane", velocity_gain=velocity_gain, position_scale=position_scale, facts=facts, **stacked)
+        return cls(
+            geometry="plane",
+            velocity_gain=factor_of_one(velocity_gain, "velocity_gain"),
+            position_scale=factor_of_one(position_scale, "position_scale"),
+            facts=facts,
+            **stacked,
+        )
 
     @classmethod
     def simulated(
@@ -373,12 +383,12 @@ class Survey:
     @cached_property
     def in_plane(self) -> BoolArray:
         """Which samples are used and measure the swirl's plane, shape (N,)."""
-        return self.included & (self.direction[:, 2] == 0.0)
+        return np.asarray(self.included & (self.direction[:, 2] == 0.0))
 
     @cached_property
     def axial(self) -> BoolArray:
         """Which samples are used and measure the velocity along the axis of the vortex, shape (N,)."""
-        return self.included & (self.direction[:, 2] != 0.0)
+        return np.asarray(self.included & (self.direction[:, 2] != 0.0))
 
     @property
     def points(self) -> int:
