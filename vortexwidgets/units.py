@@ -55,8 +55,8 @@ _FRACTIONS = {"": 1.0, "1": 1.0, "-": 1.0, "%": 0.01}
 _DIMENSIONS = {
     "m": "a length", "m/s": "a speed", "m²/s": "a length times a speed", "Pa": "a pressure",
     "Pa/s": "a pressure per time", "K": "a temperature", "kg/m³": "a density", "N/m": "a force per length",
-    "rad/s": "a rate of rotation", "1/s": "one over a time", "m/s²": "an acceleration", "s": "a time", "rad": "an angle", "g/kg": "a salinity",
-    "": "a plain number or %",
+    "rad/s": "a rate of rotation", "1/s": "one over a time", "m/s²": "an acceleration", "s": "a time",
+    "rad": "an angle", "g/kg": "a salinity", "": "a plain number or %",
 }  # fmt: skip
 
 
