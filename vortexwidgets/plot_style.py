@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
+from contextlib import contextmanager
+from contextvars import ContextVar
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Literal
 
@@ -40,6 +42,7 @@ class Theme:
 
     Attributes
     ----------
+    name : {"light", "dark"}
     background, text, quiet, grid : str
         Paper, letters and points, secondary letters, rules.
     warning : str
@@ -48,6 +51,7 @@ class Theme:
         Curves, in the order in which they are used everywhere.
     """
 
+    name: ThemeName
     background: str
     text: str
     quiet: str
@@ -64,6 +68,7 @@ class Theme:
 # vision (tests/test_plots.py), at a contrast of at least 3 on the paper.
 THEMES: Mapping[str, Theme] = {
     "light": Theme(
+        name="light",
         background="#ffffff",
         text="#1b1f24",
         quiet="#5a626c",
@@ -72,6 +77,7 @@ THEMES: Mapping[str, Theme] = {
         colours=("#1203a4", "#ef557a", "#2a8adb", "#75005c", "#a88b00", "#372700"),
     ),
     "dark": Theme(
+        name="dark",
         background="#15181d",
         text="#e8eaed",
         quiet="#a4abb5",
@@ -98,6 +104,25 @@ def theme_named(name: str) -> Theme:
 def line_style(number: int) -> LineStyle:
     """Line style of the curve with this number."""
     return LINE_STYLES[number % len(LINE_STYLES)]
+
+
+_in_use: ContextVar[str] = ContextVar("theme", default="light")
+
+
+def theme_in_use() -> Theme:
+    """Theme in which figures are drawn that are not told one: light, except inside `use_theme`."""
+    return THEMES[_in_use.get()]
+
+
+@contextmanager
+def use_theme(name: str) -> Iterator[Theme]:
+    """Draw in another theme what is drawn inside the `with`."""
+    theme = theme_named(name)
+    before = _in_use.set(name)
+    try:
+        yield theme
+    finally:
+        _in_use.reset(before)
 
 
 # Axes in units for people ---------------------------------------------------------------------------------------------
@@ -316,7 +341,7 @@ def show_legend(figure: Figure, entries: Sequence[tuple[Any, str]], theme: Theme
             handle.set_animated(False)
 
 
-_LETTER, _HANDLE = 0.075, 0.66  # inch: a letter of the legend, and the handle with the gaps of one column
+_LETTER, _HANDLE = 0.070, 0.62  # inch: a letter of the legend, and the handle with the gaps of one column
 
 
 # One number for each profile, so that a model keeps its colour and line style whatever its rank.

@@ -426,9 +426,9 @@ def draw(axes: Axes, consequence: Consequence) -> None:
     if not radius.size:
         draw_sentence(axes, consequence)
         return
-    from vortexwidgets.plot_style import dress, label_axis, theme_named
+    from vortexwidgets.plot_style import dress, label_axis, theme_in_use
 
-    theme = theme_named("light")
+    theme = theme_in_use()
     dress(axes, theme)
     across = mirrored(radius, odd=True)
     pressure = mirrored(consequence.curve("pressure"))

@@ -545,9 +545,9 @@ def draw(axes: Axes, consequence: Consequence) -> None:
     if not radius.size:
         draw_sentence(axes, consequence)
         return
-    from vortexwidgets.plot_style import dress, label_axis, theme_named
+    from vortexwidgets.plot_style import dress, label_axis, theme_in_use
 
-    theme = theme_named("light")
+    theme = theme_in_use()
     dress(axes, theme)
     time = consequence.curve("time")
     across = mirrored(time if time.size else radius, odd=True)
