@@ -1,0 +1,117 @@
+"""Numbers and names of the record as words."""
+
+from __future__ import annotations
+
+import dataclasses
+import math
+from collections.abc import Sequence
+from typing import Any
+
+from vortexwidgets.formatting import format_estimate, format_number
+from vortexwidgets.quantities import QUANTITIES
+from vortexwidgets.uncertainty import Estimate
+
+Row = tuple[str, str]
+
+_LEVEL = 0.95
+_INTERVAL = " (95 %: "  # what formatting puts before the interval
+
+
+def when(stamp: str) -> str:
+    """Return a time of the record as a person writes it.
+
+    Examples
+    --------
+    >>> when("2026-03-01T09:30:00+00:00")
+    '2026-03-01 09:30 UTC'
+    """
+    from datetime import UTC, datetime
+
+    try:
+        return f"{datetime.fromisoformat(stamp).astimezone(UTC):%Y-%m-%d %H:%M} UTC"
+    except ValueError:
+        return stamp
+
+
+def value_rows(value: Any, *, skip: Sequence[str] = ()) -> list[Row]:
+    """Name and text of every field of a dataclass that says something."""
+    return [
+        (words(field.name), shown(field.name, getattr(value, field.name)))
+        for field in dataclasses.fields(value)
+        if field.name not in skip and not field.name.startswith("_") and getattr(value, field.name) is not None
+    ]
+
+
+def percent(share: float) -> str:
+    """Return a share as text.
+
+    Examples
+    --------
+    >>> percent(0.1234), percent(3e-7), percent(0.0)
+    ('12.3 %', '< 0.1 %', '0 %')
+    """
+    if math.isnan(share):
+        return "undetermined"
+    if 0.0 < share < 0.001:
+        return "< 0.1 %"
+    return f"{100.0 * share:.1f} %" if share else "0 %"
+
+
+def probability(chance: float | None) -> str:
+    """Return a probability as text, never as a certainty that nobody has.
+
+    Examples
+    --------
+    >>> probability(0.342), probability(0.99999), probability(None)
+    ('0.34', '> 0.999', 'not known')
+    """
+    if chance is None or math.isnan(chance):
+        return "not known"
+    if chance < 0.001:
+        return "< 0.001"
+    if chance > 0.999:
+        return "> 0.999"
+    return f"{chance:.2f}" if 0.01 <= chance <= 0.99 else f"{chance:.3f}"
+
+
+def value_text(estimate: Estimate | None) -> str:
+    """An estimate as text; what was not given says so."""
+    return "not given" if estimate is None else format_estimate(estimate)
+
+
+def interval_text(estimate: Estimate | None) -> str:
+    """The 95 % interval of an estimate as text, empty where there is none."""
+    if estimate is None or estimate.bound is not None or not math.isfinite(estimate.value):
+        return ""
+    text = format_estimate(estimate, level=_LEVEL)
+    return text.partition(_INTERVAL)[2].removesuffix(")")
+
+
+def full_text(estimate: Estimate) -> str:
+    """An estimate with its 95 % interval as text."""
+    return format_estimate(estimate, level=_LEVEL) if interval_text(estimate) else format_estimate(estimate)
+
+
+def shown(name: str, value: Any) -> str:
+    """A field of this name as text, a number in the unit of its quantity."""
+    if isinstance(value, Estimate):
+        return format_estimate(value)
+    if isinstance(value, (int, float)) and not isinstance(value, bool):
+        quantity = QUANTITIES.get(name)
+        return format_number(float(value), quantity.unit if quantity else "")
+    return str(value)
+
+
+def number_text(value: float, unit: str = "", *, digits: int | None = None, figures: int = 3) -> str:
+    """A plain number as text, to decimals or to significant figures."""
+    if math.isnan(value):
+        return "undetermined"
+    if math.isinf(value):
+        return "∞"
+    text = f"{value:.{figures}g}" if digits is None else f"{value:.{digits}f}"
+    return f"{text} {unit}".rstrip()
+
+
+def words(name: str) -> str:
+    """A name as words."""
+    return name.replace("_", " ")
