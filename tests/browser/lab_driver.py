@@ -1,5 +1,6 @@
 """Starts JupyterLab on the loopback interface and drives it with headless Chromium."""
 
+import ast
 import contextlib
 import json
 import os
@@ -198,3 +199,18 @@ def use_theme(page, name: str) -> None:
     page.evaluate("name => jupyterapp.commands.execute('apputils:change-theme', { theme: name })", name)
     light = "true" if name.endswith("Light") else "false"
     page.wait_for_selector(f"body[data-jp-theme-light='{light}']")
+
+
+def ask_kernel(page, expression: str):
+    """Evaluate an expression in the notebook's kernel and return it, by way of JSON."""
+    answer = page.evaluate(
+        """async code => {
+            const kernel = jupyterapp.shell.currentWidget.context.sessionContext.session.kernel;
+            const request = { code: '', silent: true, user_expressions: { answer: code } };
+            const reply = await kernel.requestExecute(request).done;
+            return reply.content.user_expressions.answer;
+        }""",
+        f"__import__('json').dumps({expression})",
+    )
+    assert answer["status"] == "ok", answer
+    return json.loads(ast.literal_eval(answer["data"]["text/plain"]))

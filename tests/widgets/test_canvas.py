@@ -13,7 +13,7 @@ from vortexwidgets.widgets.canvas import LiveFigure
 class Line:
     """A plot of one line, which counts how often it was settled."""
 
-    def __init__(self, figure):
+    def __init__(self, figure, theme):
         self.axes = figure.add_subplot()
         self.axes.set_xlim(0, 1)
         self.axes.set_ylim(0, 1)

@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from matplotlib.artist import Artist
     from matplotlib.figure import Figure
 
+Theme = Literal["auto", "light", "dark"]
 FrontEnd = Literal["auto", "canvas", "image"]
 _DOTS_PER_INCH = 100
 _REST = 0.15  # s without a change after which the figure is drawn in full: longer than one step of a held key
@@ -42,9 +43,11 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
     Parameters
     ----------
     make_plot : callable
-        Called once with the empty figure; returns the plot to show.
+        Called once with the empty figure and `theme`, "light" or "dark"; returns the plot to show.
     size : (int, int)
         Width and height. [px]
+    theme : {"auto", "light", "dark"}
+        Colours of the figure; "auto" draws a light one, whose lightness the browser turns round on a dark page.
     front_end : {"auto", "canvas", "image"}
         "canvas" is ipympl's canvas with zoom, pan and picking; "image" needs nothing beyond ipywidgets. "auto" shows an
         image until ipympl's front end answers that it is there, and the canvas from then on.
@@ -63,9 +66,10 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
 
     def __init__(
         self,
-        make_plot: Callable[[Figure], _Shown],
+        make_plot: Callable[..., _Shown],
         *,
         size: tuple[int, int] = (620, 480),
+        theme: Theme = "auto",
         front_end: FrontEnd = "auto",
         rest: float = _REST,
     ) -> None:
@@ -73,11 +77,13 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
         if front_end not in ("auto", "canvas", "image"):
             raise ValueError(f"front_end must be 'auto', 'canvas' or 'image', got {front_end!r}.")
         self.add_class("vx-figure")
+        if theme == "auto":
+            self.add_class("vx-follow")
         self._size, self._rest = size, rest
         self._background: Any = None
         self.figure = _new_figure(size)
         self.canvas = _new_canvas(self.figure, interactive=front_end != "image")
-        self.plot = make_plot(self.figure)
+        self.plot = make_plot(self.figure, theme="dark" if theme == "dark" else "light")
         self._connection = self.canvas.mpl_connect("draw_event", self._on_draw)
         self._picture = ipywidgets.Image(format="png", width=size[0], height=size[1])
         self._picture.add_class("vx-picture")
@@ -135,6 +141,10 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
         from IPython.display import Image
 
         return Image(self.png(), format="png", width=self._size[0], alt="frozen picture of the panel")
+
+    def on_pick(self, action: Callable[[int], object]) -> None:
+        """Call `action` with the index of each point of the plot that is clicked."""
+        self.canvas.mpl_connect("pick_event", lambda event: action(int(event.ind[0])))
 
     def close(self) -> None:
         """Disconnect, and free the figure and its widgets."""

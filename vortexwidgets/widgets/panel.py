@@ -11,10 +11,11 @@ from typing import TYPE_CHECKING, Any
 
 import ipywidgets
 
+from vortexwidgets.widgets.canvas import LiveFigure
+
 if TYPE_CHECKING:
     from IPython.display import Image
 
-    from vortexwidgets.widgets.canvas import LiveFigure
     from vortexwidgets.widgets.state import PanelState
 
 CONTROLS_WIDTH = "320px"
@@ -35,13 +36,13 @@ class Panel(ipywidgets.VBox):
         Its `error` and `progress` are shown above the content.
     title : str
         Plain text.
-    figure : LiveFigure
+    figure : LiveFigure or SurveyFigure
         The picture that `freeze` returns.
     content : sequence of Widget
         What stands below the title.
     """
 
-    def __init__(self, state: PanelState, title: str, figure: LiveFigure[Any], content: Sequence[Any]) -> None:
+    def __init__(self, state: PanelState, title: str, figure: Any, content: Sequence[Any]) -> None:
         super().__init__()
         self.add_class("vx-panel")
         self.state = state
@@ -76,7 +77,8 @@ class Panel(ipywidgets.VBox):
 
         bundle = self._repr_mimebundle_()
         # For readers without a kernel, and for pages made from the notebook.
-        bundle["image/png"] = base64.b64encode(self.figure.png(dots_per_inch=100)).decode("ascii")
+        if self.figure.plot is not None:
+            bundle["image/png"] = base64.b64encode(self.figure.png(dots_per_inch=100)).decode("ascii")
         display(bundle, raw=True)
         display({"text/html": "<!-- the frozen picture -->"}, raw=True, display_id=self._display_id)
 
@@ -104,6 +106,31 @@ class PythonLine(ipywidgets.HTML):
     def show(self, code: str) -> None:
         """Show other code."""
         self.value = f'<pre class="vx-python" title="The same in Python: click, then copy">{html.escape(code)}</pre>'
+
+
+class ParametersText(ipywidgets.VBox):
+    """Parameters as text that can be kept, edited and pasted.
+
+    Parameters
+    ----------
+    save : callable
+        Returns the text.
+    load : callable
+        Takes the text.
+    """
+
+    def __init__(self, save: Callable[[], str], load: Callable[[str], object]) -> None:
+        self.area = ipywidgets.Textarea(
+            rows=4,
+            layout={"width": "100%"},
+            tooltip="Parameters as JSON text",
+            placeholder="Save writes here; Load reads",
+        )
+        row = buttons(
+            button("Save", lambda: setattr(self.area, "value", save()), tooltip="panel.save_parameters()"),
+            button("Load", lambda: load(self.area.value), tooltip="panel.load_parameters(text)"),
+        )
+        super().__init__([self.area, row])
 
 
 def card(title: str, *children: Any, number: int | None = None) -> Any:
@@ -156,6 +183,8 @@ def text(content: str = "", *, css_class: str = "") -> Any:
 
 
 def _descendants(widget: Any) -> list[Any]:
+    if isinstance(widget, LiveFigure):  # it frees what it holds itself
+        return []
     found = []
     for child in getattr(widget, "children", ()):
         found += [*_descendants(child), child]

@@ -6,7 +6,6 @@ import functools
 import traceback
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
-from dataclasses import replace
 from pathlib import Path
 from typing import Any, ParamSpec
 
@@ -92,7 +91,7 @@ class VortexState(PanelState):
 
     def change(self, **numbers: float) -> None:
         """Replace the vortex by one with other numbers."""
-        self.vortex = replace(self.vortex, **numbers)
+        self.vortex = self.vortex.replace(**numbers)
 
 
 class SurveyState(PanelState):
