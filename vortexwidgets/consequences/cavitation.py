@@ -463,4 +463,6 @@ def draw(axes: Axes, consequence: Consequence) -> None:
     axes.set_ylim(bottom - 0.16 * span, top + 0.06 * span)
     label_distance(axes)
     label_axis(axes, "y", "absolute pressure", "Pa")
-    axes.legend(loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=3, frameon=False, fontsize=8.0)
+    axes.legend(
+        loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=3, frameon=False, fontsize=8.0, labelcolor=theme.text
+    )

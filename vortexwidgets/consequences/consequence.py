@@ -215,6 +215,12 @@ def draw_sentence(axes: Axes, consequence: Consequence) -> None:
     """Fill axes that have nothing to plot with what is missing."""
     from textwrap import fill
 
+    from vortexwidgets.plot_style import FONT_SIZE, dress, theme_in_use
+
+    theme = theme_in_use()
+    dress(axes, theme)
     axes.set_axis_off()
     text = consequence.notes[0] if consequence.notes else "There is nothing to plot."
-    axes.text(0.02, 0.95, fill(text, 64), transform=axes.transAxes, va="top", ha="left")
+    axes.text(
+        0.02, 0.95, fill(text, 64), transform=axes.transAxes, va="top", ha="left", color=theme.text, fontsize=FONT_SIZE
+    )

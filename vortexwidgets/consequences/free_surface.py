@@ -497,4 +497,6 @@ def draw(axes: Axes, consequence: Consequence) -> None:
         )
     label_distance(axes)
     label_axis(axes, "y", "height above the still level", "m")
-    axes.legend(loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=4, frameon=False, fontsize=8.0)
+    axes.legend(
+        loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=4, frameon=False, fontsize=8.0, labelcolor=theme.text
+    )

@@ -583,4 +583,6 @@ def draw(axes: Axes, consequence: Consequence) -> None:
     else:
         label_distance(axes)
     label_axis(axes, "y", "pressure change", "Pa")
-    axes.legend(loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=3, frameon=False, fontsize=8.0)
+    axes.legend(
+        loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=3, frameon=False, fontsize=8.0, labelcolor=theme.text
+    )
