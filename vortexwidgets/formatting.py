@@ -221,7 +221,7 @@ def format_estimate(estimate: Formattable, unit: str | None = None, level: float
     if own == 0.0:
         text = _with_unit(_shortest(shown), scale.text)
         return text if level is None else f"{text} (exact)"
-    decimals = _decimals(own)
+    own, decimals = _rounding(own)
     text = _pair(shown, own, decimals, scale.text)
     if level is None:
         return text
@@ -301,15 +301,16 @@ def _with_unit(text: str, unit: str) -> str:
     return f"{text} {unit}" if unit else text
 
 
-def _decimals(uncertainty: float) -> int:
-    """Decimals to which value and uncertainty are rounded; negative = tens, hundreds."""
+def _rounding(uncertainty: float) -> tuple[float, int]:
+    """Uncertainty, and the decimals to which it and its value are rounded; negative = tens, hundreds."""
     exponent = math.floor(math.log10(uncertainty))
     leading = round(uncertainty / 10.0 ** (exponent - 2))
     if leading >= 1000:  # rounding carried
         leading, exponent = 100, exponent + 1
     if leading < 355:
-        return 1 - exponent
-    return -exponent  # 950 and above round up to 1.0 of the next power, which is two digits again
+        return uncertainty, 1 - exponent
+    # 950 and above become 1000, whose two digits end at the same decimal
+    return (uncertainty if leading < 950 else 10.0 ** (exponent + 1)), -exponent
 
 
 def _rounded(value: float, decimals: int) -> str:

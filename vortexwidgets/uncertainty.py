@@ -399,6 +399,15 @@ def from_draws(draws: npt.ArrayLike, quantity: str, budget: Sequence[Contributio
         If there are fewer than two draws or one of them is not finite.
     """
     values = np.asarray(draws, dtype=float).ravel()
+    _require_finite(values, quantity)
+    mean, deviation = float(values.mean()), float(values.std(ddof=1))
+    if deviation == 0.0 or float(np.ptp(values)) == 0.0:
+        return Estimate(mean, 0.0, quantity, tuple(budget))
+    table = np.quantile(values, PROBABILITIES)
+    return Estimate(mean, deviation, quantity, tuple(budget), quantiles=tuple(table.tolist()))
+
+
+def _require_finite(values: FloatArray, quantity: str) -> None:
     name = quantity or "the result"
     if values.size < 2:
         raise ValueError(f"{name} was drawn {values.size} times; at least two draws are needed, better 10 000.")
@@ -408,11 +417,6 @@ def from_draws(draws: npt.ArrayLike, quantity: str, budget: Sequence[Contributio
             f"{name} is not finite in {bad} of {values.size} draws; an input reaches where the formula does not hold, "
             "so reduce its uncertainty or mend the formula there."
         )
-    mean, deviation = float(values.mean()), float(values.std(ddof=1))
-    if deviation == 0.0 or float(np.ptp(values)) == 0.0:
-        return Estimate(mean, 0.0, quantity, tuple(budget))
-    table = np.quantile(values, PROBABILITIES)
-    return Estimate(mean, deviation, quantity, tuple(budget), quantiles=tuple(table.tolist()))
 
 
 def propagate(
@@ -556,6 +560,7 @@ def _monte_carlo(
             stretch = stretches[freedom] = item._stretch(draws, generator)
         columns.append(item._at(own, stretch))
     results = _column(call, columns, draws)
+    _require_finite(results, quantity)
     fewer = min(draws, _BUDGET_DRAWS)
     shares = np.zeros(len(inputs))
     for which, item in enumerate(inputs):
@@ -563,14 +568,17 @@ def _monte_carlo(
             continue
         alone: list[Any] = [np.full(fewer, other.value) for other in inputs]
         alone[which] = columns[which][:fewer]
-        shares[which] = float(np.std(_column(call, alone, fewer), ddof=1))
+        moved = _column(call, alone, fewer)
+        _require_finite(moved, quantity)
+        shares[which] = float(np.std(moved, ddof=1))
     return from_draws(results, quantity, _budget(names, inputs, shares))
 
 
 def _column(call: Callable[[Sequence[Any]], Any], columns: Sequence[Any], count: int) -> FloatArray:
     advice = "write it with NumPy so that it takes arrays, or wrap it in numpy.vectorize"
     try:
-        result = np.asarray(call(columns), dtype=float)
+        with np.errstate(all="ignore"):  # what is not finite is counted and answered in words
+            result = np.asarray(call(columns), dtype=float)
     except TypeError as error:
         raise TypeError(
             f"The function was called with arrays of {count} draws and failed ({error}); {advice}."

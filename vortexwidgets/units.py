@@ -17,7 +17,7 @@ LONGEST = 80
 """Characters of a quantity; what is longer is no number."""
 
 _NUMBER = r"[+-]?(?:\d+(?:[.,]\d*)?|[.,]\d+)(?:[eE][+-]?\d+|\s?[x×·*]\s?10\s?\^\s?[+-]?\d+)?"
-_FACTOR = r"(?:1|(?:[A-Za-zµ°%]+(?:2O)?)(?:\^?-?\d)?)"
+_FACTOR = r"(?:1|(?:[A-Za-zµ°]+(?:2O)?)(?:\^?-?\d)?)"
 _UNIT = rf"{_FACTOR}(?:[*/]{_FACTOR}){{0,5}}"
 _PLUS_MINUS = re.compile(r"±|\+/-|\+-")
 
@@ -316,7 +316,7 @@ def _library_factor(unit: str, written: str, entry: Quantity) -> tuple[float, fl
     text = re.sub(r"\s+", "*", text)
     if not re.fullmatch(_UNIT, text):
         raise ValueError(_refusal(written, entry, "is not a unit of") if unit else _no_unit(entry))
-    text = re.sub(r"(?<=[A-Za-zµ°%])\^?(-?\d)(?![\dA-Za-z])", r"**\1", text)
+    text = re.sub(r"(?<=[A-Za-zµ°])\^?(-?\d)(?![\dA-Za-z])", r"**\1", text)
     try:
         parsed = _registry().parse_units(text.replace("*1/", "/").removeprefix("1*"))
     except (pint.UndefinedUnitError, pint.DefinitionSyntaxError, ValueError, TypeError, AttributeError) as error:
