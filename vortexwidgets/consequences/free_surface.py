@@ -37,6 +37,7 @@ FloatArray = npt.NDArray[np.float64]
 
 NAME = "Free-surface dip"
 LARGEST_CAPILLARY_RATIO = 0.2  # common practice; above it the dip is not Δp/(ρg) any more
+_WATER = "#3b8ed0"  # blue on light and on dark paper
 _HALVINGS = 40  # the innermost panel adds less than 1e-24 of a profile that vanishes on the axis
 THINNING_RESERVE = 4.0  # a core half as wide at the intake has four times the drop
 
@@ -474,10 +475,9 @@ def draw(axes: Axes, consequence: Consequence) -> None:
     top = -0.14 * bottom
     axes.set_ylim(bottom, top)
     axes.set_xlim(float(across[0]), float(across[-1]))
-    water = theme.colour(2)
-    axes.fill_between(across, surface, bottom, color=water, alpha=0.16, linewidth=0.0)
+    axes.fill_between(across, surface, bottom, color=_WATER, alpha=0.16, linewidth=0.0)
     if deepest.size:
-        axes.fill_between(across, deepest, least, color=water, alpha=0.35, linewidth=0.0, label="95 %")
+        axes.fill_between(across, deepest, least, color=_WATER, alpha=0.35, linewidth=0.0, label="95 %")
     bounded = consequence.estimate.bound == "lower"
     axes.plot(across, surface, color=theme.colour(0), linewidth=1.8, label="surface, at most" if bounded else "surface")
     axes.axhline(0.0, color=theme.quiet, linewidth=0.9, linestyle=(0.0, (4.0, 3.0)), label="still level")
