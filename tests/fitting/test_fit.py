@@ -268,7 +268,7 @@ def test_samples_set_aside_are_not_used():
     [
         ({"model": "free"}, "cannot be fitted"),
         ({"model": "forced"}, "cannot be fitted"),
-        ({"model": "lamb"}, "No model named"),
+        ({"model": "no such"}, "No model named"),
         ({"background": "cubic"}, "background must be"),
         ({"uncertainties": "guess"}, "uncertainties must be"),
         ({"loss": "cauchy"}, "loss must be"),
