@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
-from functools import cached_property
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -70,22 +69,22 @@ class Samples:
         )
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(eq=False, slots=True)
 class Problem:
     """Samples and a model as one least-squares problem.
 
-    A sample measures a component of the in-plane velocity, v = swirl_scale * f(position) + background. `f` depends on the
-    nonlinear parameters (centre_x, centre_y, core_radius, shape...); swirl scale and background enter linearly. A model
-    whose strength is its circulation has swirl_scale = circulation / (2π core_radius).
+    A sample measures a component of the in-plane velocity, v = swirl_scale * f(position) + background. `f` depends on
+    the nonlinear parameters (centre_x, centre_y, core_radius, shape...); swirl scale and background enter linearly. A
+    model whose strength is its circulation has swirl_scale = circulation / (2π core_radius).
     """
 
     samples: Samples
     model: VortexModel
 
-    @cached_property
-    def kernel(self) -> Callable[..., tuple[FloatArray, ...]]:
-        """The model's compiled (F, W, dF/dshape...)."""
-        return self.model.fit_kernel()
+    kernel: Callable[..., tuple[FloatArray, ...]] = field(init=False)  # compiled (F, W, dF/dshape...) of the model
+
+    def __post_init__(self) -> None:
+        self.kernel = self.model.fit_kernel()
 
     @property
     def by_circulation(self) -> bool:
@@ -98,14 +97,31 @@ class Problem:
         return "circulation" if self.by_circulation else "swirl_scale"
 
     def columns(self, nonlinear: list[float], free: tuple[int, ...]) -> tuple[FloatArray, list[FloatArray]]:
-        """Response to a unit swirl scale and its derivatives by the free nonlinear parameters.
+        """Response to a unit swirl scale and its derivatives by the free nonlinear parameters, shape (N,) each.
 
         The derivatives are by relative change: of a length per core radius, of a shape parameter per itself, so that
         every column has the size of the response.
         """
+        rows = list(np.empty((1 + len(free), len(self.samples.target))))
+        self.fill(nonlinear, free, rows)
+        return rows[0], rows[1:]
+
+    def fill(self, nonlinear: list[float], free: tuple[int, ...], rows: list[FloatArray]) -> None:
+        """Write response and derivatives into rows that are there already."""
         samples = self.samples
         if samples.is_flat and nonlinear[CENTRE_Y] == 0.0:
-            return self._flat_columns(nonlinear, free)
+            self._fill_flat(nonlinear, free, rows)
+            return
+        columns = self._general_columns(nonlinear, free)
+        for row, column in zip(rows, columns, strict=True):
+            if samples.weights is None:
+                row[:] = column
+            else:
+                np.matmul(column, samples.weights, out=row)
+
+    def _general_columns(self, nonlinear: list[float], free: tuple[int, ...]) -> list[FloatArray]:
+        """The columns at every displacement of the instrument, shape (N,) or (N, K) each."""
+        samples = self.samples
         centre_x, centre_y, core_radius, *shape = nonlinear
         dx = samples.x - centre_x
         r2 = dx * dx
@@ -123,9 +139,8 @@ class Problem:
         if samples.toward_x is not None:
             across -= dy * samples.toward_x
         across /= r  # unit swirl direction on the measured one
-        response = swirl * across
         xw = x * vorticity
-        derivatives: list[FloatArray] = []
+        columns = [swirl * across]
         slope: FloatArray | None = None
         for index in free:
             if index == CORE_RADIUS:
@@ -143,36 +158,34 @@ class Problem:
                 column *= core_radius
             else:
                 column = (nonlinear[index] * by_shape[index - SHAPE]) * across
-            derivatives.append(column)
-        if samples.weights is not None:
-            response = response @ samples.weights
-            derivatives = [column @ samples.weights for column in derivatives]
-        return response, derivatives
+            columns.append(column)
+        return columns
 
-    def _flat_columns(self, nonlinear: list[float], free: tuple[int, ...]) -> tuple[FloatArray, list[FloatArray]]:
+    def _fill_flat(self, nonlinear: list[float], free: tuple[int, ...], rows: list[FloatArray]) -> None:
         """The same on a line through the axis that measures across itself, where most of the geometry falls away."""
-        samples = self.samples
-        dx = samples.x - nonlinear[CENTRE_X]
-        x = np.abs(dx)
+        toward = self.samples.toward_y
+        dx = np.subtract(self.samples.x, nonlinear[CENTRE_X])
+        x = np.absolute(dx)
         x += _NEAR_ZERO
         x /= nonlinear[CORE_RADIUS]
         swirl, vorticity, *by_shape = self.kernel(x, *nonlinear[SHAPE:])
-        across = np.copysign(samples.toward_y, dx)
-        response = swirl * across
-        slope = swirl - x * vorticity
-        derivatives = []
-        for index in free:
+        across = np.copysign(toward, dx)
+        np.multiply(swirl, across, rows[0])
+        if not free:
+            return
+        slope = np.multiply(x, vorticity)
+        np.subtract(swirl, slope, slope)
+        for index, row in zip(free, rows[1:], strict=True):
             if index == CORE_RADIUS:
-                column = slope * across
+                np.multiply(slope, across, row)
             elif index == CENTRE_X:
-                column = slope / x
-                column *= samples.toward_y
+                np.divide(slope, x, row)
+                np.multiply(row, toward, row)
             elif index == CENTRE_Y:
-                column = np.zeros_like(x)
+                row.fill(0.0)
             else:
-                column = (nonlinear[index] * by_shape[index - SHAPE]) * across
-            derivatives.append(column)
-        return response, derivatives
+                np.multiply(by_shape[index - SHAPE], across, row)
+                row *= nonlinear[index]
 
 
 def lay_out(survey: Survey, *, instrument: Instrument | None = None, background: Background = "none") -> Samples:
@@ -187,10 +200,7 @@ def lay_out(survey: Survey, *, instrument: Instrument | None = None, background:
 def _laid_out(survey: Survey, instrument: Instrument | None, background: Background) -> Samples:
     chosen = survey.in_plane
     x, y, velocity = survey.x[chosen], survey.y[chosen], survey.velocity[chosen]
-    if survey.uncertainty is not None:
-        uncertainty = survey.uncertainty[chosen]
-    else:
-        uncertainty = np.ones_like(velocity)
+    uncertainty = np.ones_like(velocity) if survey.uncertainty is None else survey.uncertainty[chosen]
     toward_x, toward_y = survey.direction[chosen, 0] / uncertainty, survey.direction[chosen, 1] / uncertainty
     names, columns = _background_columns(background, x, y, toward_x, toward_y)
     on_line, across = not y.any(), not toward_x.any()

@@ -15,8 +15,8 @@ from vortexwidgets.fitting.problem import CORE_RADIUS, SHAPE, Problem
 
 FloatArray = npt.NDArray[np.float64]
 
-# A swirl scale that is not free but follows from core radius and shape: (swirl scale, its derivatives by relative change
-# of core radius and of each shape parameter, divided by itself).
+# A swirl scale that is not free but follows from core radius and shape: (swirl scale, its derivatives by relative
+# change of core radius and of each shape parameter, divided by itself).
 Tie: TypeAlias = Callable[[float, list[float]], tuple[float, list[float]]]
 
 _STEPS = 60
@@ -27,6 +27,8 @@ _LEVEL = 1e-9  # below this promise a step is taken without asking whether chi-s
 _EPSILON = 1e-15  # of the power of the data: rounding of chi-square
 _ROUNDING = 1e-26  # of the power of the data: what is left when a model fits exactly
 _LARGEST = 1.0  # of a relative step
+_CANCELLED = 1e-8  # of the power of the data: below it chi-square as a difference of sums has too few digits
+_SINGULAR = 1e-14  # of a diagonal element: what is left of it is rounding
 
 # A shape parameter beyond these no longer changes a profile that anyone could measure.
 SHAPE_BOUNDS = (0.02, 200.0)
@@ -46,22 +48,23 @@ class Solution:
     linear: list[float]  # swirl scale, background...
     steps: int
     converged: bool
-    _state: _State
-    _matrix: list[list[float]] | None
+    _estimate: float
+    _gram: FloatArray | None
 
     @property
     def swirl_scale(self) -> float:
         """Γ/(2π core_radius), or V. [m/s]"""
         return self.linear[0]
 
-    @cached_property
+    @property
     def chi_square(self) -> float:
         """Sum of squared weighted residuals, and of the prior's."""
-        value = self._state.chi_square
-        if value > 1e-8 * self.problem.samples.power:
-            return value
+        if self._estimate > _CANCELLED * self.problem.samples.power:
+            return self._estimate
         # The difference of two nearly equal sums has lost its digits: sum the residuals themselves.
-        return float(self.residuals @ self.residuals)
+        value = float(self.residuals @ self.residuals)
+        prior = self.problem.samples.prior
+        return value if prior is None or prior[0] not in self.free else value + _pull(prior, self.nonlinear) ** 2
 
     @cached_property
     def residuals(self) -> FloatArray:
@@ -72,34 +75,35 @@ class Solution:
             residuals -= np.array(self.linear[1:]) @ self.problem.samples.background
         return residuals
 
-    @cached_property
+    @property
     def normal(self) -> FloatArray:
         """Matrix of the normal equations by the scaled parameters, shape (P, P)."""
         factor = np.array(self._factors)
-        return np.array([row[: len(factor)] for row in self._products]) * factor * factor[:, None]
+        return np.asarray(self._products[:-1, :-1] * factor * factor[:, None])
 
-    @cached_property
+    @property
     def inverse(self) -> list[list[float]]:
         """Inverse of `normal` as rows; infinite where a parameter does not matter."""
-        factor = self._factors
-        lower, _ = _factored(self._products, [0.0] * len(factor))
-        return [
-            [value / (f * g) for value, g in zip(row, factor, strict=True)]
-            for row, f in zip(_inverted(lower), factor, strict=True)
-        ]
+        factors = self._factors
+        inverse = _inverse(self._products.tolist(), len(factors))
+        for row, own in zip(inverse, factors, strict=True):
+            for column, other in enumerate(factors):
+                row[column] /= own * other
+        return inverse
 
-    @cached_property
+    @property
     def jacobian(self) -> FloatArray:
         """Derivatives of the weighted model by the scaled parameters, shape (P, N)."""
-        rows = _state(self.problem, self.nonlinear, self.free, None).rows
-        return np.array(rows) * np.array(self._factors)[:, None]
+        columns = _Columns(self.problem, self.free, None)
+        columns.at(self.nonlinear)
+        return np.asarray(columns.matrix[:-1] * np.array(self._factors)[:, None])
 
-    @cached_property
-    def _products(self) -> list[list[float]]:
+    @property
+    def _products(self) -> FloatArray:
         """Inner products of the columns at the minimum itself, which the last step no longer asked for."""
-        if self._matrix is not None:
-            return self._matrix
-        return _state(self.problem, self.nonlinear, self.free, None).products
+        if self._gram is not None:
+            return self._gram
+        return _Columns(self.problem, self.free, None).at(self.nonlinear).gram
 
     @property
     def _factors(self) -> list[float]:
@@ -136,25 +140,27 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     ----------
     .. [1] G. H. Golub and V. Pereyra, SIAM J. Numer. Anal. 10 (1973) 413-432; L. Kaufman, BIT 15 (1975) 49-57.
     """
-    here = list(start)
-    state = _state(problem, here, free, tie)
-    unit = 1.0 / len(problem.samples.target)
+    here = start
+    columns = _Columns(problem, free, tie)
+    state = columns.at(here)
+    power, unit = problem.samples.power, 1.0 / len(problem.samples.target)
     damping = 0.0
-    last_step: list[float] = []
-    linear: list[float] = []
     before: _State | None = None
-    matrix: list[list[float]] | None = None
+    last_step: list[float] = []
     last = math.inf
+    linear = state.level
+    gram: FloatArray | None = None
     converged = False
     steps = 0
     while steps < _STEPS:
         steps += 1
-        step, decrement = state.step, state.decrement
+        solution, step, decrement = state.solution, state.step, state.decrement
         if len(here) > SHAPE and (stuck := _at_bounds(here, free, step)):
-            step, decrement = _step_without(state, stuck)
+            solution, decrement = _without(state, stuck)
+            step = _relative(solution[columns.eliminated:], state.strength)
         noise = unit * state.chi_square
         quadratic = decrement < _QUADRATIC * noise
-        if decrement <= _ROUNDING * problem.samples.power or (quadratic and decrement > 0.25 * last):
+        if decrement <= _ROUNDING * power or (quadratic and decrement > 0.25 * last):
             converged = True
             break
         if quadratic and decrement * min(decrement / last, 1.0) < _REMAINING * noise:
@@ -162,198 +168,235 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
             ratio = _ratio(step, last_step)
             series = 1.0 / (1.0 - ratio)
             if before is not None and tie is None:
-                matrix = _ahead(before.products, state.products, series * ratio)
+                gram = state.gram + series * ratio * (state.gram - before.gram)
             here = _moved(here, free, [series * value for value in step])
-            now, then = state.linear(tied=tie is not None), state.linear_after(tied=tie is not None)
-            linear = [a + series * (b - a) for a, b in zip(now, then, strict=True)]
+            linear = [now + series * (then - now) for now, then in zip(state.level, solution, strict=False)]
             converged = True
             break
         if damping:
             step = _damped(state, damping)
         trial = _moved(here, free, step)
-        new = _state(problem, trial, free, tie)
-        if new.chi_square <= state.chi_square + _EPSILON * problem.samples.power or decrement < _LEVEL * noise:
-            here, before, state = trial, state, new
+        new = columns.at(trial)
+        if new.chi_square <= state.chi_square + _EPSILON * power or decrement < _LEVEL * noise:
+            here, before, state, linear = trial, state, new, new.level
             last, last_step = (decrement, step) if not damping else (math.inf, [])
             damping = 0.1 * damping if damping > 1e-4 else 0.0
         elif damping < 1e10:
             damping = max(10.0 * damping, 1e-3)
         else:
             break
-    if not linear:
-        linear = state.linear(tied=tie is not None)
-    return Solution(problem, here, free, linear, steps, converged, state, matrix)
+    if tie is not None:
+        linear = [state.strength, *linear]
+    return Solution(problem, here, free, linear, steps, converged, state.chi_square, gram)
 
 
 def misfit(problem: Problem, here: list[float]) -> float:
     """Chi-square at a point, with swirl scale and background eliminated."""
-    return _state(problem, here, (), None).chi_square
+    return _Columns(problem, (), None).at(here).chi_square
 
 
 @dataclass(eq=False, slots=True)
 class _State:
-    """Where the iteration stands: everything follows from the inner products of the columns.
+    """Where the iteration stands: everything follows from the inner products of the columns."""
 
-    The columns are [response unless tied, background..., derivatives...]; the first `eliminated` of them are linear.
-    """
-
-    rows: list[FloatArray]
-    products: list[list[float]]
-    overlap: list[float]
+    gram: FloatArray  # inner products of the columns, shape (P + 1, P + 1)
     eliminated: int
-    lower: list[list[float]]
-    half: list[float]
     strength: float
+    level: list[float]  # what is linear, eliminated at this point
+    solution: list[float]  # the same after the step, then the step times the strength
     step: list[float]  # relative, of the free nonlinear parameters
     chi_square: float
-    decrement: float
-
-    def linear(self, *, tied: bool) -> list[float]:
-        """Swirl scale and background, eliminated at this point."""
-        level = _back(self.lower[: self.eliminated], self.half[: self.eliminated])
-        return [self.strength, *level] if tied else level
-
-    def linear_after(self, *, tied: bool) -> list[float]:
-        """The same after the step."""
-        level = _back(self.lower, self.half)[: self.eliminated]
-        return [self.strength, *level] if tied else level
+    decrement: float  # of chi-square, promised by the step
 
 
-def _state(problem: Problem, here: list[float], free: tuple[int, ...], tie: Tie | None) -> _State:
-    samples = problem.samples
-    response, rows = problem.columns(here, free)
-    eliminated = len(samples.background)
-    target = samples.target
-    strength = math.nan
-    if tie is not None:
+class _Columns:
+    """The columns of a problem as rows of one matrix that every evaluation fills anew.
+
+    They are [response unless tied, background..., derivatives..., target]; those before the derivatives are linear.
+    """
+
+    def __init__(self, problem: Problem, free: tuple[int, ...], tie: Tie | None) -> None:
+        samples = problem.samples
+        tied = tie is not None
+        self.problem, self.free, self.tie = problem, free, tie
+        background = len(samples.background)
+        self.eliminated = background + (not tied)
+        self.matrix = np.empty((self.eliminated + len(free) + 1, len(samples.target)))
+        rows = list(self.matrix)
+        if background:
+            self.matrix[self.eliminated - background : self.eliminated] = samples.background
+        rows[-1][:] = samples.target
+        self.response = np.empty_like(samples.target) if tied else rows[0]
+        self.filled = [self.response, *rows[self.eliminated : -1]]
+        self.target = rows[-1]
+        self.transposed = self.matrix.T
+        self.prior = samples.prior if samples.prior is not None and samples.prior[0] in free else None
+
+    def at(self, here: list[float]) -> _State:
+        """Evaluate the columns at a point and eliminate what is linear."""
+        self.problem.fill(here, self.free, self.filled)
+        strength = math.nan if self.tie is None else self._tied(here, self.tie)
+        gram = self.matrix.dot(self.transposed)
+        if self.prior is not None:
+            self._add_prior(self.prior, gram, here, strength)
+        level, solution, chi_square, decrement = _solved(gram.tolist(), self.eliminated)
+        if self.tie is None:
+            strength = level[0]
+        step = _relative(solution[self.eliminated :], strength)
+        return _State(gram, self.eliminated, strength, level, solution, step, chi_square, decrement)
+
+    def _tied(self, here: list[float], tie: Tie) -> float:
+        """Take the swirl that is not free off the target, and turn the derivatives along the tie."""
         strength, slopes = tie(here[CORE_RADIUS], here[SHAPE:])
-        rows = [
-            column if index < CORE_RADIUS else column + slopes[index - CORE_RADIUS] * response
-            for index, column in zip(free, rows, strict=True)
-        ]
-        target = target - strength * response
-    if eliminated:
-        rows = [*samples.background, *rows]
-    if tie is None:
-        rows.insert(0, response)
-        eliminated += 1
-    matrix = np.array([*rows, target])
-    products: list[list[float]] = (matrix @ matrix.T).tolist()
-    overlap = products.pop()  # the last row and column are the target's
-    chi_square = overlap.pop()
-    lower: list[list[float]] = []
-    half: list[float] = []
-    if samples.prior is None or samples.prior[0] not in free:
-        _factor(products, overlap, lower, half, len(overlap))
-        if tie is None:
-            strength = half[0] / lower[0][0] if eliminated == 1 else _back(lower[:eliminated], half[:eliminated])[0]
-    else:
-        _factor(products, overlap, lower, half, eliminated)
-        if tie is None:
-            strength = _back(lower, half)[0]
+        for index, row in zip(self.free, self.filled[1:], strict=True):
+            if index >= CORE_RADIUS:
+                row += slopes[index - CORE_RADIUS] * self.response
+        np.subtract(self.problem.samples.target, strength * self.response, out=self.target)
+        return strength
+
+    def _add_prior(
+        self, prior: tuple[int, float, float], gram: FloatArray, here: list[float], strength: float
+    ) -> None:
+        """Add the row of a parameter that is known beforehand, as a sample of its own."""
+        index, _, uncertainty = prior
+        if self.tie is None:
+            strength = _solved(gram.tolist(), self.eliminated)[0][0]
+        off, row = _pull(prior, here), self.eliminated + self.free.index(index)
         # In units of the matrix a relative step is strength times the step.
-        index, value, uncertainty = samples.prior
-        off, weight = (value - here[index]) / uncertainty, here[CORE_RADIUS] / uncertainty
-        row = eliminated + free.index(index)
-        chi_square += off * off
-        if strength:
-            products[row][row] += (weight / strength) ** 2
-            overlap[row] += weight * off / strength
-        _factor(products, overlap, lower, half, len(overlap))
-    chi_square -= sum([value * value for value in half[:eliminated]])
-    decrement = sum([value * value for value in half[eliminated:]])
-    step = _relative(_back(lower, half)[eliminated:], strength)
-    return _State(rows, products, overlap, eliminated, lower, half, strength, step, chi_square, decrement)
+        weight = here[CORE_RADIUS] / uncertainty / strength if strength else 0.0
+        gram[row, row] += weight * weight
+        gram[row, -1] += weight * off
+        gram[-1, row] += weight * off
+        gram[-1, -1] += off * off
 
 
-_SINGULAR = 1e-14  # of a diagonal element: what is left of it is rounding
+def _pull(prior: tuple[int, float, float], here: list[float]) -> float:
+    """How far a parameter stands below what was known beforehand, in standard uncertainties."""
+    index, value, uncertainty = prior
+    return (value - here[index]) / uncertainty
 
 
-def _factor(
-    matrix: list[list[float]], right: list[float], lower: list[list[float]], half: list[float], last: int
-) -> None:
-    """Continue a Cholesky factor L and L⁻¹ right up to a row; a row that depends on the others is left out."""
-    for i in range(len(half), last):
-        source = matrix[i]
-        row: list[float] = []
-        value = right[i]
-        pivot = source[i]
-        for j in range(i):
-            above = lower[j]
-            entry = source[j]
-            for k in range(j):
-                entry -= row[k] * above[k]
-            entry /= above[j]
-            row.append(entry)
-            pivot -= entry * entry
-            value -= entry * half[j]
-        if pivot > _SINGULAR * source[i]:
-            pivot = math.sqrt(pivot)
-            row.append(pivot)
-            half.append(value / pivot)
-        else:
-            row.append(math.inf)
-            half.append(0.0)
-        lower.append(row)
+def _solved(matrix: list[list[float]], eliminated: int) -> tuple[list[float], list[float], float, float]:
+    """Solve the normal equations, whose right side is the last row and column, from the upper left on.
 
+    Returns
+    -------
+    level : list of float
+        Solution of the first `eliminated` rows alone.
+    solution : list of float
+        Solution of all.
+    chi_square : float
+        What the first rows leave of the lower right element.
+    decrement : float
+        What the other rows take off it.
 
-def _inverted(lower: list[list[float]]) -> list[list[float]]:
-    """Inverse of L Lᵀ; infinite on the diagonal of a row that was left out."""
-    size = len(lower)
-    columns = []
+    Notes
+    -----
+    Gaussian elimination without pivoting, as fits a positive matrix. A row that depends on those above is left out, its
+    unknown 0.
+    """
+    size = len(matrix) - 1
+    if size == 3 and eliminated == 1 and (short := _solved_by_hand(matrix)):
+        return short
+    upper: list[list[float]] = []
+    chi_square, decrement = matrix[size][size], 0.0
     for i in range(size):
-        unit = [0.0] * size
-        unit[i] = 1.0
-        for j in range(i, size):
-            row = lower[j]
-            value = unit[j]
-            for k in range(i, j):
-                value -= row[k] * unit[k]
-            unit[j] = value / row[j]
-        columns.append(_back(lower, unit))
-        if lower[i][i] == math.inf:
-            columns[i][i] = math.inf
-    return columns
+        row = matrix[i][:]
+        for j, above in enumerate(upper):
+            factor = above[i] / above[j]
+            for k in range(i, size + 1):
+                row[k] -= factor * above[k]
+        if not row[i] > _SINGULAR * matrix[i][i]:
+            row[i] = math.inf
+        upper.append(row)
+        if i < eliminated:
+            chi_square -= row[size] / row[i] * row[size]
+        else:
+            decrement += row[size] / row[i] * row[size]
+    return _back(upper, eliminated), _back(upper, size), chi_square, decrement
 
 
-def _back(lower: list[list[float]], half: list[float]) -> list[float]:
-    """Solve the transposed factor."""
-    result = list(half)
-    for i in range(len(result) - 1, -1, -1):
-        row = lower[i]
-        value = result[i] / row[i]
-        result[i] = value
-        for k in range(i):
-            result[k] -= row[k] * value
-    return result
+def _back(upper: list[list[float]], size: int) -> list[float]:
+    """Solve the first rows of an upper triangle whose last column is the right side."""
+    solution = [0.0] * size
+    for i in range(size - 1, -1, -1):
+        row = upper[i]
+        value = row[-1]
+        for k in range(i + 1, size):
+            value -= row[k] * solution[k]
+        solution[i] = value / row[i]
+    return solution
+
+
+def _solved_by_hand(matrix: list[list[float]]) -> tuple[list[float], list[float], float, float] | None:
+    """The same for a strength and two others, in the same order; six times faster than the loops. None if singular."""
+    (a, b, c, t), (_, d, e, u), (_, _, f, v), (_, _, _, chi_square) = matrix
+    if not a > 0.0:
+        return None
+    d_least, f_least = _SINGULAR * d, _SINGULAR * f
+    factor = b / a
+    d -= factor * b
+    e -= factor * c
+    u -= factor * t
+    factor = c / a
+    f -= factor * c
+    v -= factor * t
+    if not d > d_least:
+        return None
+    factor = e / d
+    f -= factor * e
+    v -= factor * u
+    if not f > f_least:
+        return None
+    z = v / f
+    y = (u - e * z) / d
+    level = t / a
+    return [level], [(t - b * y - c * z) / a, y, z], chi_square - level * t, u / d * u + z * v
+
+
+def _inverse(matrix: list[list[float]], size: int) -> list[list[float]]:
+    """Inverse of the upper left of a positive matrix; infinite on the diagonal of a row that depends on those above."""
+    inverse = [row[:size] for row in matrix[:size]]
+    left_out = []
+    for i in range(size):
+        row = inverse[i]
+        pivot = row[i]
+        if not pivot > _SINGULAR * matrix[i][i]:
+            left_out.append(i)
+            continue
+        row[i] = 1.0
+        for k in range(size):
+            row[k] /= pivot
+        for other in inverse:
+            if other is not row:
+                factor = other[i]
+                other[i] = 0.0
+                for k in range(size):
+                    other[k] -= factor * row[k]
+    for i in left_out:
+        for k in range(size):
+            inverse[i][k] = inverse[k][i] = 0.0
+        inverse[i][i] = math.inf
+    return inverse
 
 
 def _damped(state: _State, damping: float) -> list[float]:
     """The step with the diagonal of the nonlinear parameters raised (Levenberg-Marquardt)."""
-    products = [list(row) for row in state.products]
-    for i in range(state.eliminated, len(products)):
+    products = state.gram.tolist()
+    for i in range(state.eliminated, len(products) - 1):
         products[i][i] *= 1.0 + damping
-    lower, half = _factored(products, state.overlap)
-    return _relative(_back(lower, half)[state.eliminated :], state.strength)
+    _, solution, _, _ = _solved(products, state.eliminated)
+    return _relative(solution[state.eliminated :], state.strength)
 
 
-def _step_without(state: _State, stuck: list[int]) -> tuple[list[float], float]:
-    """Step and promised decrease with some nonlinear parameters held."""
-    size, eliminated = len(state.overlap), state.eliminated
+def _without(state: _State, stuck: list[int]) -> tuple[list[float], float]:
+    """Solution and promised decrease with some nonlinear parameters held."""
+    size, eliminated = len(state.solution), state.eliminated
     keep = [row for row in range(size) if row - eliminated not in stuck]
-    lower, half = _factored(
-        [[state.products[row][column] for column in keep] for row in keep], [state.overlap[row] for row in keep]
-    )
-    solved = dict(zip(keep, _back(lower, half), strict=True))
-    step = _relative([solved.get(row, 0.0) for row in range(eliminated, size)], state.strength)
-    return step, sum([value * value for value in half[eliminated:]])
-
-
-def _factored(matrix: list[list[float]], right: list[float]) -> tuple[list[list[float]], list[float]]:
-    lower: list[list[float]] = []
-    half: list[float] = []
-    _factor(matrix, right, lower, half, len(right))
-    return lower, half
+    products = state.gram[np.ix_([*keep, size], [*keep, size])].tolist()
+    _, solution, _, decrement = _solved(products, eliminated)
+    solved = dict(zip(keep, solution, strict=True))
+    return [solved.get(row, 0.0) for row in range(size)], decrement
 
 
 def _relative(step: list[float], strength: float) -> list[float]:
@@ -368,24 +411,21 @@ def _ratio(step: list[float], last: list[float]) -> float:
     return ratio if abs(ratio) < 0.5 else 0.0
 
 
-def _ahead(before: list[list[float]], now: list[list[float]], further: float) -> list[list[float]]:
-    """Matrix after one more step, `further` times the last one, along the same line."""
-    return [[b + further * (b - a) for a, b in zip(old, new, strict=True)] for old, new in zip(before, now, strict=True)]
-
-
 def _moved(here: list[float], free: tuple[int, ...], step: list[float]) -> list[float]:
     """Lengths of the centre move by core radii; positive parameters move by a factor."""
-    there = list(here)
-    core_radius = here[CORE_RADIUS]
+    there = here[:]
     for index, change in zip(free, step, strict=True):
         if index < CORE_RADIUS:
-            limit = 3.0 * _LARGEST
-            there[index] = here[index] + core_radius * max(-limit, min(limit, change))
+            there[index] += here[CORE_RADIUS] * _limited(change, 3.0 * _LARGEST)
         else:
-            there[index] = here[index] * math.exp(max(-_LARGEST, min(_LARGEST, change)))
+            there[index] *= math.exp(_limited(change, _LARGEST))
             if index >= SHAPE:
                 there[index] = min(max(there[index], SHAPE_BOUNDS[0]), SHAPE_BOUNDS[1])
     return there
+
+
+def _limited(change: float, limit: float) -> float:
+    return change if abs(change) < limit else math.copysign(limit, change)
 
 
 def _at_bounds(here: list[float], free: tuple[int, ...], step: list[float]) -> list[int]:
