@@ -1,6 +1,7 @@
 """Makes the built-in invented surveys: python tests/survey_examples.py vortexwidgets/survey/examples.
 
 The truth is the Lamb-Oseen profile v = Γ / (2π r) (1 - exp(-r²/r_c²)), written here and not taken from the package.
+The seeds give ordinary noise: its chi-square is near the number of samples.
 """
 
 import sys
@@ -26,7 +27,7 @@ class Recipe:
 
 RECIPES = {
     "wing-tip": Recipe(
-        seed=20,
+        seed=2,
         circulation=0.360,
         core_radius=5.0e-3,
         centre=(1.7e-3, 0.9e-3),
@@ -45,7 +46,7 @@ RECIPES = {
             "title: wing-tip vortex in a water tunnel (invented survey)",
             "fluid: water",
             "temperature: 20.0 ± 0.2 degC",
-            "ambient pressure: 92.0 ± 0.3 kPa",
+            "ambient pressure: 93.0 ± 0.3 kPa",
             "free stream: 10.00 ± 0.05 m/s",
             "velocity gain: 1.000 ± 0.005",
             "orientation: submerged",

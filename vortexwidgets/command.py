@@ -78,7 +78,8 @@ def _sentence(error: Exception) -> str:
     if isinstance(error, OSError) and error.strerror:
         where = f" {error.filename}" if error.filename else ""
         return f"cannot use{where}: {error.strerror.lower()}."
-    return " ".join(str(error).split()) or type(error).__name__
+    text = "".join(sign if sign.isprintable() else " " for sign in str(error))
+    return " ".join(text.split()) or type(error).__name__
 
 
 def _parser() -> _Parser:
@@ -154,7 +155,6 @@ def _version_or_help(options: argparse.Namespace) -> None:
 
 
 def _demo(options: argparse.Namespace) -> None:
-    from vortexwidgets.appraisal import appraise
     from vortexwidgets.survey.reading import example_survey
 
     survey = example_survey(options.survey)
@@ -163,6 +163,9 @@ def _demo(options: argparse.Namespace) -> None:
         _check_writable(record)
         if record.exists() and survey.provenance.file.encode() not in record.read_bytes():
             raise ValueError(f"{record} exists and is not a record of this demo; name another place with --folder.")
+
+    from vortexwidgets.appraisal import appraise
+
     appraisal = appraise(survey)
     _report(survey, appraisal)
     _save(appraisal, records)
