@@ -176,6 +176,7 @@ def running_chromium(executable: str, profile: Path, *, width: int = 1300, heigh
             args=list(CHROMIUM_FLAGS),
             viewport={"width": width, "height": height},
         )
+        context.set_default_timeout(15_000)
         try:
             yield context
         finally:
@@ -198,7 +199,7 @@ def use_theme(page, name: str) -> None:
     """Switch JupyterLab to the theme "JupyterLab Light" or "JupyterLab Dark"."""
     page.evaluate("name => jupyterapp.commands.execute('apputils:change-theme', { theme: name })", name)
     light = "true" if name.endswith("Light") else "false"
-    page.wait_for_selector(f"body[data-jp-theme-light='{light}']")
+    page.wait_for_selector(f"body[data-jp-theme-light='{light}']", state="attached")
 
 
 def ask_kernel(page, expression: str):

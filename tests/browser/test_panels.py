@@ -143,7 +143,7 @@ def test_clicking_a_point_sets_it_aside_and_clicking_it_again_puts_it_back(surve
     line = "panel.figure.plot.points"
     where = f"{line}.axes.transData.transform({line}.get_xydata()[5]).tolist()"
     x, y = ask_kernel(survey_page, where)
-    height = ask_kernel(survey_page, "panel.figure.figure.bbox.height")
+    height = ask_kernel(survey_page, "panel.figure.live.figure.bbox.height")
     canvas = survey_page.locator(".vx-figure canvas").first
     start = ask_kernel(survey_page, "sorted(panel.survey.set_aside)")
     assert 5 not in start

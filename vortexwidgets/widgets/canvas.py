@@ -173,12 +173,19 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
         # Also after a zoom, a resize and a change of the screen's pixel ratio, which the canvas does by itself.
         self._background = self.canvas.copy_from_bbox(self.figure.bbox)
         self._paint()
+        self._send_whole_frames()
 
     def _show_frame(self) -> None:
         if self.is_interactive:
+            self._send_whole_frames()
             self.canvas.blit()
         else:
             self._send_picture()
+
+    def _send_whole_frames(self) -> None:
+        # ipympl would send differences, and its front end drops a frame that is followed too closely by the next one:
+        # a lost difference would leave holes.
+        self.canvas._force_full = True
 
     def _send_picture(self) -> None:
         from PIL import Image

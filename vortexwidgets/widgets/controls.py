@@ -248,7 +248,7 @@ def _slider(scale: Scale, *, continuous_update: bool) -> Any:
     low, high = (end / scale.factor for end in scale.typical)
     options = {
         "description": scale.label,
-        "tooltip": f"{scale.description} Arrow and page keys move it.",
+        "tooltip": f"{scale.description.rstrip('.')}. Arrow and page keys move it.",
         "readout": False,
         "continuous_update": continuous_update,
     }

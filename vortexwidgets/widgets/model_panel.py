@@ -15,7 +15,16 @@ from vortexwidgets.models.vortex import Vortex
 from vortexwidgets.plots import ProfilePlot
 from vortexwidgets.widgets.canvas import FrontEnd, LiveFigure, Theme
 from vortexwidgets.widgets.controls import NumberControl, Scale
-from vortexwidgets.widgets.panel import Panel, ParametersText, PythonLine, button, buttons, columns, folded
+from vortexwidgets.widgets.panel import (
+    FIGURE_WIDTH,
+    Panel,
+    ParametersText,
+    PythonLine,
+    button,
+    buttons,
+    columns,
+    folded,
+)
 from vortexwidgets.widgets.state import VortexState
 from vortexwidgets.widgets.vortex_controls import VortexControls, numbers_of, vortex_like
 
@@ -57,7 +66,7 @@ class ModelPanel(Panel):
     ) -> None:
         vortex = model if isinstance(model, Vortex) else vortex_like(None, model)
         state = VortexState(vortex=vortex, density=density)
-        figure = LiveFigure(ProfilePlot, size=(640, 620), theme=theme, front_end=front_end)
+        figure = LiveFigure(ProfilePlot, size=(FIGURE_WIDTH, 600), theme=theme, front_end=front_end)
         self._start = (vortex, density)
         self.controls = VortexControls(state, continuous_update=continuous_update)
         self.density = NumberControl(Scale.of_quantity("density"), density, continuous_update=continuous_update)

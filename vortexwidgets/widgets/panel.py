@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from vortexwidgets.widgets.state import PanelState
 
 CONTROLS_WIDTH = "320px"
+FIGURE_WIDTH = 580  # px: fits beside the controls in a wide notebook, and below them in one of 800 px
 
 
 @cache
@@ -143,9 +144,9 @@ def card(title: str, *children: Any, number: int | None = None) -> Any:
 
 def columns(narrow: Sequence[Any], wide: Sequence[Any]) -> Any:
     """Return controls beside a figure; where there is no room, above it."""
-    # Without a fixed basis the figure would press the sliders flat.
-    left = ipywidgets.VBox(list(narrow), layout={"flex": f"0 0 {CONTROLS_WIDTH}", "max_width": "100%"})
-    right = ipywidgets.VBox(list(wide), layout={"flex": "1 1 420px", "min_width": "0"})
+    # Without a fixed basis the figure would press the sliders flat. Where both fit, the figure takes the room to spare.
+    left = ipywidgets.VBox(list(narrow), layout={"flex": f"1 0 {CONTROLS_WIDTH}", "min_width": "0"})
+    right = ipywidgets.VBox(list(wide), layout={"flex": f"999 1 {FIGURE_WIDTH}px", "min_width": "0"})
     left.add_class("vx-narrow")
     right.add_class("vx-wide")
     box = ipywidgets.Box([left, right], layout={"display": "flex", "flex_flow": "row wrap", "width": "100%"})

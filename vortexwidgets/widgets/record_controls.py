@@ -29,7 +29,7 @@ class RecordControls(ipywidgets.VBox):
             button("Save JSON", state.reported(lambda: self.save("json")), tooltip="A file that loads back"),
         )
         field = ipywidgets.VBox([self.name])
-        field.add_class("vx-field")
+        field.add_class("vx-field").add_class("vx-line")
         self.children = (field, row, self.saved, self.python_line)
         self.name.observe(lambda _: self.python_line.show(self.python), "value")
         self.python_line.show(self.python)

@@ -9,6 +9,7 @@ import ipywidgets
 
 from vortexwidgets.plots import PlanePlot, SurveyPlot
 from vortexwidgets.widgets.canvas import FrontEnd, LiveFigure, Theme
+from vortexwidgets.widgets.panel import FIGURE_WIDTH
 from vortexwidgets.widgets.state import JobState, SurveyState, VortexState
 
 if TYPE_CHECKING:
@@ -47,7 +48,7 @@ class SurveyFigure(ipywidgets.Box):
         self.add_class("vx-survey-figure")
         self.live: LiveFigure[Any] | None = None
         self._state, self._hand = state, hand
-        self._options: dict[str, Any] = {"theme": theme, "front_end": front_end, "size": (640, 520)}
+        self._options: dict[str, Any] = {"theme": theme, "front_end": front_end, "size": (FIGURE_WIDTH, 500)}
         self._picked: list[Callable[[int], object]] = []
         names = ["survey", "appraisal"] if isinstance(state, JobState) else ["survey"]
         state.observe(state.reported(self._show), names)

@@ -133,7 +133,7 @@ class PointsControls(ipywidgets.VBox):
         every = button("Put all back", state.reported(self.put_all_back), tooltip="survey.with_all()")
         hint = text("Click a point in the figure to set it aside or to put it back, or name samples by number.")
         fields = ipywidgets.VBox([self.numbers, self.reason])
-        fields.add_class("vx-field")
+        fields.add_class("vx-field").add_class("vx-line")
         self.children = (card("Points in and out", hint, fields, buttons(aside, back, every), self.list),)
         state.observe(lambda change: self._show(change.new), "survey")
         self._show(state.survey)

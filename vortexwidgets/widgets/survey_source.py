@@ -43,7 +43,7 @@ class SurveySource(ipywidgets.VBox):
         )
         read = button("Read", state.reported(self.read), tooltip="survey = vx.read_survey(path)", primary=True)
         field = ipywidgets.VBox([self.path])
-        field.add_class("vx-field")
+        field.add_class("vx-field").add_class("vx-line")
         self.children = (field, buttons(read, self.upload))
         self.upload.observe(state.reported(lambda change: self._read_upload(change.new)), "value")
 
