@@ -38,9 +38,9 @@ _POINTS = 240
 _DEFAULT_REACH = 0.1  # m, where no vortex has a length of its own
 
 _ROWS = (
-    ("swirl $v_θ$", "m/s"),
-    ("vorticity $ω$", "1/s"),
-    ("pressure drop $p_∞ − p$", "Pa"),
+    ("swirl", "$v_θ$", "m/s"),
+    ("vorticity", "$ω$", "1/s"),
+    ("pressure drop", "$p_∞ − p$", "Pa"),
 )
 
 
@@ -117,14 +117,16 @@ class ProfilePlot:
         names = [_name(vortex) for vortex in self._vortices]
         width, height = self.figure.get_size_inches()
         row = width > 1.5 * height
-        left, right, top = 0.72, 0.16, legend_height(names, width - 0.9)
+        left, right = 0.72 if row else 0.88, 0.16
+        top = legend_height(names, width - left - right)
+        between = " " if row else "\n"  # low axes have no room for a label in one line
         if row:
             place_in_grid(self._axes, columns=3, left=left, right=right, bottom=0.52, top=top, across=0.82)
         else:
             place_in_grid(self._axes, columns=1, left=left, right=right, bottom=0.52, top=top, down=0.2)
-        for (text, unit), axes, lines in zip(_ROWS, self._axes, self._lines, strict=True):
+        for (name, symbol, unit), axes, lines in zip(_ROWS, self._axes, self._lines, strict=True):
             axes.set_ylim(*limits_around(np.append(self._within_sight(lines), 0.0)))
-            label_axis(axes, "y", text, unit, ticks=6 if row else 4)
+            label_axis(axes, "y", f"{name}{between}{symbol}", unit, ticks=6 if row else 4)
             label_axis(axes, "x", "radius $r$", "m", ticks=6 if row else 8)
             bottom = row or axes is self.pressure_drop
             axes.tick_params(labelbottom=bottom)

@@ -139,9 +139,10 @@ class SurveyPlot:
 
     def settle(self) -> None:
         """Fit limits, ticks, legend and margins to what is shown now."""
+        before = self.axes.get_xlim()
         self._fit_limits()
-        if self._survey is not None:
-            self._draw_samples()
+        self._draw_samples()
+        if self.axes.get_xlim() != before:
             self._draw_curves()
         entries = self._entries()
         width = float(self.figure.get_size_inches()[0])
