@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from functools import lru_cache
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -150,14 +150,14 @@ def free_parameters(
         missed = survey.miss_distance
         if missed is None or missed.uncertainty == 0.0:
             held = {CENTRE_Y: 0.0 if missed is None else missed.value}
-    names = ["centre_x", "centre_y", "core_radius", *(parameter.name for parameter in model.shape)]
+    names = _nonlinear_names(model)
     for name, value in (fixed or {}).items():
         if name not in names:
             raise ValueError(f"No parameter {name!r} to hold for {model.name}. Known: {', '.join(names)}.")
         if names.index(name) >= CORE_RADIUS and not value > 0.0:
             raise ValueError(f"fixed {name} must be positive, got {value}.")
         held[names.index(name)] = float(value)
-    return tuple(index for index in range(len(names)) if index not in held), held
+    return tuple([index for index in range(len(names)) if index not in held]), held
 
 
 def fit_problem(
@@ -257,28 +257,30 @@ def _refuse_failure(fit: Fit) -> None:
         raise FitError(Status.NO_VORTEX.value + " Check the sign, the units and the centre, or measure closer.", fit)
 
 
+@lru_cache(maxsize=64)
+def _nonlinear_names(model: VortexModel) -> tuple[str, ...]:
+    return ("centre_x", "centre_y", "core_radius", *(parameter.name for parameter in model.shape))
+
+
 def _names(problem: Problem, free: tuple[int, ...]) -> tuple[str, ...]:
-    labels = ("centre_x", "centre_y", "core_radius", *(parameter.name for parameter in problem.model.shape))
-    return (problem.strength_name, *problem.samples.background_names, *(labels[index] for index in free))
+    names = _nonlinear_names(problem.model)
+    return (problem.strength_name, *problem.samples.background_names, *[names[index] for index in free])
 
 
 def _starts(
     problem: Problem, free: tuple[int, ...], held: Mapping[int, float], given: Mapping[str, float]
 ) -> list[list[float]]:
-    names = ["centre_x", "centre_y", "core_radius", *(parameter.name for parameter in problem.model.shape)]
-    linear = (problem.strength_name, *problem.samples.background_names)
-    unknown = [name for name in given if name not in names and name not in linear]
-    if unknown:
-        raise ValueError(f"No parameter {unknown[0]!r} to start from. Known: {', '.join(names)}.")
-    wanted = {names.index(name): float(value) for name, value in given.items() if name in names}
-    if all(index in wanted or index in held or index >= SHAPE for index in range(SHAPE)):
-        start = [wanted.get(index, held.get(index, math.nan)) for index in range(SHAPE)]
-        start += [
-            wanted.get(index, held.get(index, parameter.default))
-            for index, parameter in enumerate(problem.model.shape, SHAPE)
-        ]
-        return [start]
-    known = {**held, **wanted}
+    names = _nonlinear_names(problem.model)
+    wanted: dict[int, float] = {}
+    for name, value in given.items():
+        if name in names:
+            wanted[names.index(name)] = float(value)
+        elif name != problem.strength_name and name not in problem.samples.background_names:
+            raise ValueError(f"No parameter {name!r} to start from. Known: {', '.join(names)}.")
+    known = {**wanted, **held}
+    if CENTRE_X in known and CENTRE_Y in known and CORE_RADIUS in known:
+        shape = [known.get(index, parameter.default) for index, parameter in enumerate(problem.model.shape, SHAPE)]
+        return [[known[CENTRE_X], known[CENTRE_Y], known[CORE_RADIUS], *shape]]
     found = search(problem, centre=(known.get(CENTRE_X), known.get(CENTRE_Y)), several=2)
     rest = tuple(index for index in free if index not in wanted)
     return starts_for(problem, rest, found, known)
@@ -306,9 +308,9 @@ def _robust(problem: Problem, settings: Settings, solution: Solution) -> tuple[P
 
 
 def _model(model: str | VortexModel) -> VortexModel:
-    from vortexwidgets.models.catalogue import model_named
+    from vortexwidgets.models.catalogue import MODELS, model_named
 
-    chosen = model_named(model) if isinstance(model, str) else model
+    chosen = (MODELS.get(model) or model_named(model)) if isinstance(model, str) else model
     if not chosen.ranked:
         raise ValueError(
             f"{chosen.name} cannot be fitted: it has no core radius or no pressure on the axis. "

@@ -146,7 +146,7 @@ def _log_slope(measure: Callable[..., float], shape: list[float], which: int) ->
 def null_chi_square(problem: Problem) -> float:
     """Chi-square of the background alone, without any vortex."""
     if len(problem.samples.background) == 0:
-        return float(problem.samples.target @ problem.samples.target)
+        return problem.samples.power
     level = np.linalg.lstsq(problem.samples.background.T, problem.samples.target, rcond=None)[0]
     rest = problem.samples.target - level @ problem.samples.background
     return float(rest @ rest)

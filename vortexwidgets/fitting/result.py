@@ -113,11 +113,13 @@ class Fit:
 
     def _turned(self, covariance: list[list[float]]) -> list[list[float]]:
         """From the swirl scale to the strength: circulation is swirl scale times 2π core_radius."""
-        if self._problem.by_circulation and "core_radius" in self.names:
+        if self._problem.by_circulation and CORE_RADIUS in self._solution.free:
             turn = self.names.index("core_radius")
             first = [a + b for a, b in zip(covariance[0], covariance[turn], strict=True)]
+            for row, value in zip(covariance, first, strict=True):
+                row[0] = value
             first[0] += first[turn]
-            covariance = [first, *([f, *row[1:]] for f, row in zip(first[1:], covariance[1:], strict=True))]
+            covariance[0] = first
         return covariance
 
     @property
@@ -135,9 +137,9 @@ class Fit:
             covariance = np.full(covariance.shape, math.nan)
             if len(keep):
                 part = np.ix_(keep, keep)
-                inverse = np.linalg.pinv(self._solution.normal[part], hermitian=True)
+                inverse = np.asarray(np.linalg.pinv(self._solution.normal[part], hermitian=True), dtype=np.float64)
                 covariance[part] = inverse * self._variance if self.loss == "linear" else self._sandwich(inverse, keep)
-        return covariance * scale * scale[:, None]
+        return np.asarray(covariance * scale * scale[:, None])
 
     @cached_property
     def values(self) -> FloatArray:
@@ -156,7 +158,7 @@ class Fit:
 
     @cached_property
     def scatter(self) -> float:
-        """Standard deviation of the weighted residuals about the fit: near 1 where stated uncertainties hold; else [m/s]."""
+        """Standard deviation of the weighted residuals: near 1 where stated uncertainties hold; without them in m/s."""
         return math.sqrt(self.chi_square / max(self.degrees_of_freedom, 1))
 
     @cached_property
@@ -348,7 +350,8 @@ class Fit:
         core_radius = solution.nonlinear[CORE_RADIUS]
         turned = 2.0 * math.pi * core_radius if self._problem.by_circulation else 1.0
         strength: dict[str, Any] = {self._problem.strength_name: solution.swirl_scale * turned}
-        shape = {p.name: value for p, value in zip(self.model.shape, solution.nonlinear[SHAPE:], strict=True)}
+        names = [parameter.name for parameter in self.model.shape]
+        shape: dict[str, Any] = dict(zip(names, solution.nonlinear[SHAPE:], strict=True))
         return Vortex(
             self.model,
             core_radius=core_radius,
@@ -500,7 +503,7 @@ class Fit:
 
 
 def two_sided_quantiles(value: float, low: float, high: float) -> tuple[float, ...] | None:
-    """Quantiles of a distribution that has a median and 95 % limits: normal on each side, in the logarithm if positive."""
+    """Quantiles from a median and 95 % limits: normal on each side, in the logarithm where all are positive."""
     if not (math.isfinite(low) and math.isfinite(high) and low < value < high):
         return None
     factor = 1.959963984540054  # 97.5 % point of the normal distribution
