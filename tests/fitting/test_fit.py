@@ -101,7 +101,8 @@ def test_values_and_uncertainties_equal_those_of_an_independent_optimiser(key):
         ftol=1e-15, xtol=1e-15, gtol=1e-15,
     )  # fmt: skip
     names = ["circulation", "centre_x", "core_radius"]
-    assert [fit.value(name) for name in names] == pytest.approx(values, rel=1e-8)
+    # A centre near zero is compared with the core radius.
+    assert [fit.value(name) for name in names] == pytest.approx(values, rel=1e-8, abs=1e-8 * 0.011)
     assert [fit.uncertainty(name) for name in names] == pytest.approx(np.sqrt(np.diag(covariance)), rel=1e-6)
 
 

@@ -39,6 +39,7 @@ class Samples:
     background_names: tuple[str, ...]
     is_flat: bool  # a line that measures across itself, positive to its left
     prior: tuple[int, float, float] | None  # nonlinear parameter, value, standard uncertainty
+    station: npt.NDArray[np.intp] | None  # (N,) which reading each sample repeats; None where no reading is repeated
 
     @property
     def position(self) -> tuple[FloatArray, FloatArray]:
@@ -227,7 +228,15 @@ def _laid_out(survey: Survey, instrument: Instrument | None, background: Backgro
         background_names=names,
         is_flat=on_line and across and bool((toward_y > 0.0).all()),
         prior=prior,
+        station=_stations(survey),
     )
+
+
+def _stations(survey: Survey) -> npt.NDArray[np.intp] | None:
+    chosen = survey.in_plane
+    keys = np.column_stack([survey.x[chosen], survey.y[chosen], survey.direction[chosen]])
+    readings, station = np.unique(keys, axis=0, return_inverse=True)
+    return np.ravel(station) if len(readings) < len(keys) else None
 
 
 def _background_columns(

@@ -165,7 +165,7 @@ def rank_models(
     criteria -= criteria.min()
     weights = np.exp(-0.5 * criteria)
     weights /= weights.sum()
-    tests = _absolute_tests([fit for _, _, fit in kept]) if known else _relative_tests(survey, [f for _, _, f in kept])
+    tests = _absolute_tests([fit for _, _, fit in kept]) if known else _relative_tests([fit for _, _, fit in kept])
     rows = [
         Ranked(model, names, fit, float(aicc), float(weight), p, p < REJECTION, reason)
         for (model, names, fit), aicc, weight, (p, reason) in zip(kept, criteria, weights, tests, strict=True)
@@ -223,11 +223,12 @@ def _fits(
 
 
 def _aicc(fit: Fit, *, known: bool) -> float:
-    samples = fit.degrees_of_freedom + len(fit.names)
     k = len(fit.names)
     if known:
+        samples = fit.degrees_of_freedom + k
         value = fit.chi_square + 2.0 * k
     else:
+        samples = fit.effective_samples
         value = samples * math.log(max(fit.chi_square, 1e-300) / samples)
         k += 1
         value += 2.0 * k
@@ -258,41 +259,48 @@ def _absolute_tests(fits: Sequence[Fit]) -> list[tuple[float, str]]:
     return tests
 
 
-def _relative_tests(survey: Survey, fits: Sequence[Fit]) -> list[tuple[float, str]]:
-    """Lack of fit against repeats where there are enough of them, else against the smallest residuals."""
+def _relative_tests(fits: Sequence[Fit]) -> list[tuple[float, str]]:
+    """Lack of fit against repeats where those tell the whole scatter, else against the smallest residuals."""
     from scipy.special import fdtrc
 
-    pure, freedom = _repeats(survey, fits[0])
-    tests = []
-    if freedom >= 5:
-        for fit in fits:
-            extra = fit.degrees_of_freedom - freedom
-            lack = max(fit.chi_square - pure, 0.0)
-            ratio = (lack / max(extra, 1)) / (pure / freedom)
-            p = float(fdtrc(max(extra, 1), freedom, ratio))
-            tests.append((p, f"lack of fit is {ratio:.2f} times the scatter of the repeats (p = {p:.2g})."))
-        return tests
     best = min(fits, key=lambda fit: fit.scatter)
-    unit = best.scatter**2
+    pure, freedom = _repeats(best)
+    if freedom >= 5 and pure > 0.0:
+        rows = []
+        for fit in fits:
+            extra = max(fit.degrees_of_freedom - freedom, 1)
+            ratio = max(fit.chi_square - pure, 0.0) / extra / (pure / freedom)
+            p = float(fdtrc(extra, freedom, ratio))
+            rows.append((p, f"lack of fit is {ratio:.2f} times the scatter of the repeats (p = {p:.2g})."))
+        if rows[list(fits).index(best)][0] >= REJECTION:
+            return rows
+    shared = (
+        " Repeated readings scatter less than the residuals of every model: readings at one station share an error, and "
+        "stations are counted instead."
+        if freedom >= 5
+        else ""
+    )
+    samples = best.effective_samples
+    share = samples / (best.degrees_of_freedom + len(best.names))
+    unit = best.chi_square / max(best.degrees_of_freedom, 1) / share
+    tests = []
     for fit in fits:
         rise = max(fit.chi_square - best.chi_square, 0.0)
         ratio = rise / unit if unit > 0.0 else (math.inf if rise > 0.0 else 0.0)
-        p = float(fdtrc(1, max(best.degrees_of_freedom, 1), ratio)) if math.isfinite(ratio) else 0.0
+        p = float(fdtrc(1, max(samples - len(best.names), 1), ratio)) if math.isfinite(ratio) else 0.0
         if fit is best:
-            reason = "smallest residuals; their scatter is taken as the noise, so this model cannot be rejected."
+            p, reason = 1.0, "smallest residuals; their scatter is taken as the noise, so it cannot be rejected."
         else:
             reason = f"the sum of squares is {ratio:.1f} noise variances above the smallest (p = {p:.2g})."
-        tests.append((p, reason))
+        tests.append((p, reason + shared))
     return tests
 
 
-def _repeats(survey: Survey, fit: Fit) -> tuple[float, int]:
-    """Sum of squares about the means of repeated samples, and its degrees of freedom."""
-    chosen = survey.in_plane
-    keys = np.column_stack([survey.x[chosen], survey.y[chosen], survey.direction[chosen]])
-    _, group = np.unique(keys, axis=0, return_inverse=True)
-    group = np.ravel(group)
-    count = np.bincount(group)
-    target = fit._problem.samples.target
-    mean = np.bincount(group, weights=target) / count
-    return float(np.sum((target - mean[group]) ** 2)), int(np.sum(count - 1))
+def _repeats(fit: Fit) -> tuple[float, int]:
+    """Sum of squares of repeated readings about their means, and its degrees of freedom."""
+    samples = fit._problem.samples
+    if samples.station is None:
+        return 0.0, 0
+    count = np.bincount(samples.station)
+    mean = np.bincount(samples.station, weights=samples.target) / count
+    return float(np.sum((samples.target - mean[samples.station]) ** 2)), int(np.sum(count - 1))

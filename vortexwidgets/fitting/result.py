@@ -193,7 +193,33 @@ class Fit:
         """What one unit of chi-square stands for."""
         if self.uncertainties == "absolute":
             return 1.0
-        return self.chi_square / max(self.degrees_of_freedom, 1)
+        alone = self.chi_square / max(self.degrees_of_freedom, 1)
+        together = self._station_scatter
+        return alone if together is None else max(alone, together[0])
+
+    @cached_property
+    def _station_scatter(self) -> tuple[float, int] | None:
+        """Variance of the residuals from the means of repeated readings, and its degrees of freedom.
+
+        Readings at one station share its errors of position and drift: where their means scatter more than they
+        themselves allow, it is the stations that count and not the readings.
+        """
+        station = self._problem.samples.station
+        if station is None:
+            return None
+        count = np.bincount(station)
+        total = np.bincount(station, weights=self._solution.residuals)
+        freedom = len(count) - len(self.names)
+        return (float(np.sum(total**2 / count)) / freedom, freedom) if freedom > 0 else None
+
+    @property
+    def effective_samples(self) -> int:
+        """Number of independent samples: of stations, where repeated readings share their error."""
+        together = self._station_scatter
+        samples = self.degrees_of_freedom + len(self.names)
+        if together is None or together[0] * self.degrees_of_freedom <= 1.5 * self.chi_square:
+            return samples
+        return together[1] + len(self.names)
 
     @cached_property
     def _is_seen(self) -> bool:
@@ -498,7 +524,7 @@ class Fit:
 
         tail = 0.5 + 0.5 * level
         if self.uncertainties == "relative":
-            return float(stdtrit(max(self.degrees_of_freedom, 1), tail))
+            return float(stdtrit(max(self.effective_samples - len(self.names), 1), tail))
         return float(ndtri(tail))
 
 
