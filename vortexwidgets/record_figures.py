@@ -112,9 +112,9 @@ def consequence_figure(item: Any) -> FigureData | None:
     if not item.curves:
         return None
 
-    def draw_one(figure: Figure, theme: Theme) -> None:
+    def draw_one(figure: Figure, _: Theme) -> None:
         axes = _lone(figure, left=0.85, top=0.36)
-        draw(axes, item, theme=theme.name)
+        draw(axes, item)
 
     return _figure(
         draw_one,

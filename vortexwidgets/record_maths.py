@@ -50,6 +50,8 @@ def mathml(latex: str, *, display: bool = True) -> str:
         return _as_it_is(latex)
     for element in found.iter():
         element.tag = element.tag.removeprefix(_NAMESPACE)
+        if element.tag == "mo" and (element.text or "").isalpha():  # the name of a function is spaced as a name
+            element.tag = "mi" if len(element.text or "") > 1 else "mtext"
     found.set("xmlns", _NAMESPACE[1:-1])
     found.attrib = {"xmlns": found.attrib.pop("xmlns"), **found.attrib}
     outer = list(found)

@@ -13,6 +13,7 @@ from vortexwidgets.record_maths import font_rule, mathml
 from vortexwidgets.record_texts import (
     Row,
     full_text,
+    in_unit_of,
     interval_text,
     number_text,
     percent,
@@ -78,7 +79,10 @@ def content(appraisal: Any) -> dict[str, Any]:
         "criterion": appraisal.criterion,
         "parameters": parameter_tables(appraisal),
         "rejected": rejected_rows(appraisal),
-        "drops": [(item.name, full_text(item.estimate), item.explanation) for item in appraisal.core_drops],
+        "drops": [
+            (item.name, value_text(item.estimate), interval_text(item.estimate), item.explanation)
+            for item in appraisal.core_drops
+        ],
         "envelope": envelope(appraisal),
         "share_beyond": percent(appraisal.share_beyond),
         "edge_circulation": format_estimate(appraisal.edge_circulation),
@@ -111,6 +115,8 @@ def result_rows(appraisal: Any) -> list[tuple[str, str, str]]:
         ("core radius of the best model", core.core_radius),
         ("circulation", core.circulation),
     ]
+    if appraisal.core_pressure_drop.bound is not None:
+        estimates.insert(1, ("drop if the line went through the axis", appraisal.centred_drop))
     rows = [(name, value_text(estimate), interval_text(estimate)) for name, estimate in estimates]
     rows.append(("K in drop = K ρ v_peak²", number_text(appraisal.pressure_constant, digits=3), ""))
     rows.append(("drop over the models not rejected", envelope(appraisal), ""))
@@ -139,7 +145,7 @@ def model_row(row: Any) -> dict[str, Any]:
         "names": " = ".join(row.names),
         "aicc": number_text(row.aicc, digits=1),
         "weight": percent(row.weight),
-        "p": number_text(row.p_value, figures=2),
+        "p": format_number(row.p_value, "", 2),
         "rejected": row.rejected,
         "verdict": "rejected" if row.rejected else "not rejected",
         "reason": row.reason,
@@ -218,7 +224,7 @@ def data_shares(data_drop: Any) -> list[tuple[str, str, str]]:
         ("beyond the last station, at constant circulation", data_drop.beyond),
     ]
     total = sum(part for _, part in parts)
-    return [(name, format_number(part, "Pa"), percent(part / total if total else math.nan)) for name, part in parts]
+    return [(name, in_unit_of(total, part, "Pa"), percent(part / total if total else math.nan)) for name, part in parts]
 
 
 def budgets(appraisal: Any) -> list[dict[str, Any]]:
@@ -235,10 +241,14 @@ def budgets(appraisal: Any) -> list[dict[str, Any]]:
         parts = sorted_budget(estimate.budget)
         whole = sum(part.uncertainty**2 for part in parts)
         rows = [
-            (part.name, format_number(part.uncertainty, estimate.unit, 3), percent(part.uncertainty**2 / whole))
+            (
+                part.name,
+                in_unit_of(estimate.uncertainty, part.uncertainty, estimate.unit),
+                percent(part.uncertainty**2 / whole),
+            )
             for part in parts
         ]
-        rows.append(("together", format_number(estimate.uncertainty, estimate.unit, 3), ""))
+        rows.append(("together", in_unit_of(estimate.uncertainty, estimate.uncertainty, estimate.unit), ""))
         tables.append({"name": name, "rows": rows})
     return tables
 
@@ -249,6 +259,7 @@ def consequence_page(item: Any, number: int) -> dict[str, Any]:
         **verdict_row(item, number),
         "question": item.question,
         "value": full_text(item.estimate),
+        "value_name": f"value ({words(item.estimate.quantity)})" if item.estimate.quantity else "value",
         "criterion_source": item.criterion.source,
         "source": item.source,
         "caution": item.caution,
@@ -274,7 +285,10 @@ def derivation_steps(appraisal: Any) -> dict[str, Any]:
 
 def agreement_table(agreement: Any) -> dict[str, Any]:
     """Symbolic against numeric, for one model."""
-    rows = [(words(row.quantity), row.compared_with, f"{row.worst:.1e}", f"x = {row.at:.3g}") for row in agreement.rows]
+    rows = [
+        (words(row.quantity), row.compared_with, format_number(row.worst, "", 2), f"x = {row.at:.3g}")
+        for row in agreement.rows
+    ]
     return {"model": str(getattr(agreement.model, "name", agreement.model)), "rows": rows}
 
 

@@ -18,6 +18,7 @@ from vortexwidgets.plot_style import (
     theme_in_use,
     use_theme,
 )
+from vortexwidgets.record_texts import percent
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -110,8 +111,7 @@ def ranking_plot(axes: Axes, models: Sequence[Any]) -> None:
             edgecolor=colour,
             hatch="////" if row.rejected else None,
         )
-        text = f"{100.0 * row.weight:.1f} %"
-        axes.text(row.weight + 0.012, place, text, va="center", fontsize=SMALL, color=theme.text)
+        axes.text(row.weight + 0.012, place, percent(row.weight), va="center", fontsize=SMALL, color=theme.text)
     axes.set_yticks(range(len(names)), names)
     axes.set_ylim(len(names) - 0.4, -0.6)
     axes.set_xlim(0.0, 1.14)

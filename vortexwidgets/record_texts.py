@@ -7,7 +7,7 @@ import math
 from collections.abc import Sequence
 from typing import Any
 
-from vortexwidgets.formatting import format_estimate, format_number
+from vortexwidgets.formatting import format_estimate, format_number, scale_for
 from vortexwidgets.quantities import QUANTITIES
 from vortexwidgets.uncertainty import Estimate
 
@@ -90,6 +90,18 @@ def interval_text(estimate: Estimate | None) -> str:
 def full_text(estimate: Estimate) -> str:
     """An estimate with its 95 % interval as text."""
     return format_estimate(estimate, level=_LEVEL) if interval_text(estimate) else format_estimate(estimate)
+
+
+def in_unit_of(whole: float, part: float, unit: str) -> str:
+    """Return a part of a whole in the unit that suits the whole, so that parts can be compared.
+
+    Examples
+    --------
+    >>> in_unit_of(1300.0, 71.23, "Pa")
+    '0.0712 kPa'
+    """
+    scale = scale_for(unit, whole)
+    return f"{float(f'{part / scale.size:.3g}'):g} {scale.text}".rstrip()
 
 
 def shown(name: str, value: Any) -> str:
