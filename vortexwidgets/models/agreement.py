@@ -251,11 +251,9 @@ def _slope(function: Function, at: FloatArray) -> FloatArray:
     estimates = []
     for number in range(12):
         step = _LONGEST_STEP / 2.0**number
-        forward, backward = (
-            function(np.outer(at, np.exp(step * _STEPS))),
-            function(np.outer(at, np.exp(-step * _STEPS))),
-        )
-        estimates.append((forward - backward) @ _WEIGHTS / step)
+        factors = np.exp(step * _STEPS)
+        rise = function(np.outer(at, factors)) - function(np.outer(at, 1.0 / factors))
+        estimates.append(rise @ _WEIGHTS / step)
     found = np.array(estimates)
     best = np.argmin(np.abs(np.diff(found, axis=0)), axis=0)
     result: FloatArray = found[best, np.arange(at.size)]

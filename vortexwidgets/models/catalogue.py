@@ -106,7 +106,10 @@ LAMB_OSEEN = VortexModel(
         "Fys. 7 (1911)."
     ),
     # SymPy's integral takes seconds and ends in exp_polar, which NumPy cannot evaluate.
-    stated={"pressure_drop": (1 - sp.exp(-_S)) ** 2 / (2 * _S) + sp.expint(1, _S) - sp.expint(1, 2 * _S)},
+    stated={
+        "pressure_drop": (1 - sp.exp(-_S)) ** 2 / (2 * _S) + sp.expint(1, _S) - sp.expint(1, 2 * _S),
+        "centre": sp.log(2),
+    },
     published_peak=(_LAMB_OSEEN_PEAK, sp.Float("0.71533") / _LAMB_OSEEN_PEAK),
     published_pressure_constant=sp.Float("1.702"),
     published_source=(
