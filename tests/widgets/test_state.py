@@ -3,7 +3,8 @@ import sys
 
 import pytest
 
-from vortexwidgets.widgets.state import PanelState, sentence_of
+from vortexwidgets.models.vortex import Vortex
+from vortexwidgets.widgets.state import JobState, PanelState, VortexState, sentence_of
 
 
 def test_an_exception_of_a_callback_becomes_the_error():
@@ -45,3 +46,22 @@ def test_the_state_needs_no_toolkit():
         "import sys, vortexwidgets.widgets.state; sys.exit('ipywidgets' in sys.modules or 'matplotlib' in sys.modules)"
     )
     assert subprocess.run([sys.executable, "-c", code], check=False).returncode == 0
+
+
+def test_an_action_that_goes_well_does_not_hide_the_error_of_what_it_set_off():
+    state = VortexState(vortex=Vortex("rankine", circulation=1.0, core_radius=1.0))
+    state.observe(state.showing(lambda: 1 / 0), "vortex")
+    state.reported(lambda: state.change(core_radius=2.0))()
+    assert state.error.startswith("ZeroDivisionError")
+
+
+def test_a_defect_of_the_package_is_named_as_one():
+    state = VortexState(vortex=Vortex("rankine", circulation=1.0, core_radius=1.0))
+    state.reported(lambda: state.change(**{5: 1.0}))()
+    assert state.error.startswith("TypeError")
+
+
+def test_an_appraisal_is_forgotten_when_its_input_changes():
+    state = JobState(appraisal="the old one")
+    state.models = ("rankine",)
+    assert state.appraisal is None

@@ -52,7 +52,7 @@ class AppraisalPanel(Panel):
         super().__init__(state, "From a survey to the pressure on the axis", figure, ())
         figure.on_pick(state.reported(self.points.toggle))
         self.children += self._content()
-        state.observe(state.reported(self._show), ["survey", "models", "appraisal"])
+        state.observe(state.showing(self._show), ["survey", "models", "appraisal"])
         self._show()
         if survey is not None:
             state.reported(self.appraise)()
@@ -129,7 +129,7 @@ class AppraisalPanel(Panel):
             card("Record", self.record, folded("Parameters as text, to keep or to paste", self.text), number=6),
         )
 
-    def _show(self, _: object = None) -> None:
+    def _show(self) -> None:
         for name, page in appraisal_pages(self.survey, self.appraisal).items():
             self.pages[name].value = page
         for name, code in self._python().items():

@@ -37,7 +37,7 @@ class ModelChoice(ipywidgets.VBox):
         self.children = (ipywidgets.HTML(f"<p>{html.escape('Profiles that compete:')}</p>"), row)
         for key, box in self.boxes.items():
             box.observe(state.reported(lambda change, key=key: self._on_box(key, change.new)), "value")
-        state.observe(self._show, "models")
+        state.observe(state.showing(self._show), "models")
         self._show()
 
     def _on_box(self, key: str, ticked: bool) -> None:
@@ -53,6 +53,6 @@ class ModelChoice(ipywidgets.VBox):
     def _competes(self, key: str) -> bool:
         return not self._state.models or key in self._state.models
 
-    def _show(self, _: object = None) -> None:
+    def _show(self) -> None:
         for key, box in self.boxes.items():
             box.value = self._competes(key)

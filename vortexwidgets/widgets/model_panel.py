@@ -7,12 +7,14 @@ import json
 from typing import Any
 
 import ipywidgets
+import traitlets
 
 from vortexwidgets.formatting import format_number
 from vortexwidgets.models.agreement import check_agreement
 from vortexwidgets.models.derivation import Derivation, derivation
 from vortexwidgets.models.vortex import Vortex
 from vortexwidgets.plots import ProfilePlot
+from vortexwidgets.quantities import check
 from vortexwidgets.widgets.canvas import FrontEnd, LiveFigure, Theme
 from vortexwidgets.widgets.controls import NumberControl, Scale
 from vortexwidgets.widgets.panel import (
@@ -75,8 +77,8 @@ class ModelPanel(Panel):
         self.text = ParametersText(self.save_parameters, state.reported(self.load_parameters))
         super().__init__(state, "A vortex turned by hand", figure, ())
         self.children += self._content()
-        self.density.observe(lambda change: state.set_trait("density", change.new), "value")
-        state.observe(state.reported(self._show), ["vortex", "density"])
+        traitlets.link((state, "density"), (self.density, "value"))
+        state.observe(state.showing(self._show), ["vortex", "density"])
         self._show()
 
     @property
@@ -113,8 +115,7 @@ class ModelPanel(Panel):
         numbers = parameters_from(text)
         density = numbers.pop("density", self.state.density)
         vortex = Vortex(numbers.pop("model"), **numbers)
-        self.density.value = density
-        self.state.vortex = vortex
+        self.state.vortex, self.state.density = vortex, check("density", density)
 
     def _content(self) -> tuple[Any, ...]:
         actions = buttons(
@@ -129,7 +130,7 @@ class ModelPanel(Panel):
             folded("Parameters as text, to keep or to paste", self.text),
         )
 
-    def _show(self, _: object = None) -> None:
+    def _show(self) -> None:
         self.figure.plot.update([self.vortex], self.state.density)
         self.figure.moved()
         self.readouts.value = readout_table(self.vortex, self.state.density)

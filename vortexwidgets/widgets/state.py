@@ -6,12 +6,14 @@ import functools
 import traceback
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
+from dataclasses import replace
 from pathlib import Path
 from typing import Any, ParamSpec
 
 import traitlets
 
 _PACKAGE = Path(__file__).parents[1]
+_SENTENCES = (ValueError, KeyError, OSError, RuntimeError)  # what the package raises to be read; the rest are defects
 _Arguments = ParamSpec("_Arguments")
 
 
@@ -29,18 +31,29 @@ class PanelState(traitlets.HasTraits):
     error = traitlets.Unicode("")
     progress = traitlets.Unicode("")
 
+    _depth = 0
+
     @contextmanager
-    def reporting(self) -> Iterator[None]:
-        """Show an exception of the enclosed work in the panel; a callback has no caller who could catch it."""
+    def reporting(self, *, fresh: bool = True) -> Iterator[None]:
+        """Show an exception of the enclosed work in the panel; a callback has no caller who could catch it.
+
+        Parameters
+        ----------
+        fresh : bool
+            Whether an error of earlier work goes. What an action sets off in turn never clears what it reported.
+        """
+        if fresh and self._depth == 0:
+            self.error = ""
+        self._depth += 1
         try:
             yield
         except Exception as problem:
             self.error = sentence_of(problem)
-        else:
-            self.error = ""
+        finally:
+            self._depth -= 1
 
     def reported(self, action: Callable[_Arguments, object]) -> Callable[_Arguments, None]:
-        """Return `action` as a callback whose exceptions end up in `error`."""
+        """Return what a person does as a callback whose exceptions end up in `error`."""
 
         @functools.wraps(action)
         def callback(*args: _Arguments.args, **kwargs: _Arguments.kwargs) -> None:
@@ -48,6 +61,15 @@ class PanelState(traitlets.HasTraits):
                 action(*args, **kwargs)
 
         return callback
+
+    def showing(self, view: Callable[[], object]) -> Callable[[object], None]:
+        """Return what follows a change of the value as an observer whose exceptions end up in `error`."""
+
+        def observer(_: object) -> None:
+            with self.reporting(fresh=False):
+                view()
+
+        return observer
 
     @contextmanager
     def working(self, message: str) -> Iterator[None]:
@@ -69,7 +91,8 @@ def sentence_of(problem: Exception) -> str:
     """
     text = str(problem.args[0]) if isinstance(problem, KeyError) and problem.args else str(problem)
     frames = traceback.extract_tb(problem.__traceback__)
-    if text and frames and Path(frames[-1].filename).is_relative_to(_PACKAGE):
+    own = bool(frames) and Path(frames[-1].filename).is_relative_to(_PACKAGE)
+    if text and own and isinstance(problem, _SENTENCES):
         return text
     place = f" ({Path(frames[-1].filename).name}, line {frames[-1].lineno})" if frames else ""
     return f"{type(problem).__name__}: {text or 'no message'}{place}"
@@ -91,7 +114,7 @@ class VortexState(PanelState):
 
     def change(self, **numbers: float) -> None:
         """Replace the vortex by one with other numbers."""
-        self.vortex = self.vortex.replace(**numbers)
+        self.vortex = replace(self.vortex, **numbers)
 
 
 class SurveyState(PanelState):

@@ -51,9 +51,9 @@ class SurveyFigure(ipywidgets.Box):
         self._options: dict[str, Any] = {"theme": theme, "front_end": front_end, "size": (FIGURE_WIDTH, 500)}
         self._picked: list[Callable[[int], object]] = []
         names = ["survey", "appraisal"] if isinstance(state, JobState) else ["survey"]
-        state.observe(state.reported(self._show), names)
+        state.observe(state.showing(self._show), names)
         if hand is not None:
-            hand.observe(state.reported(self._show), "vortex")
+            hand.observe(state.showing(self._show), "vortex")
         self._show()
 
     @property
@@ -78,7 +78,7 @@ class SurveyFigure(ipywidgets.Box):
             raise ValueError("There is no picture yet; read a survey first.")
         return self.live
 
-    def _show(self, _: object = None) -> None:
+    def _show(self) -> None:
         survey = self._state.survey
         if survey is None:
             self._replace(None)

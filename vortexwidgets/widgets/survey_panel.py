@@ -60,7 +60,7 @@ class SurveyPanel(Panel):
             folded("Parameters as text, to keep or to paste", self.text),
         )
         figure.on_pick(state.reported(self.points.toggle))
-        state.observe(state.reported(self._show), ["survey", "instrument"])
+        state.observe(state.showing(self._show), ["survey", "instrument"])
         self._show()
 
     @property
@@ -112,7 +112,7 @@ class SurveyPanel(Panel):
             survey = survey.without([index], reason=reason)
         self.state.survey, self.state.instrument = survey, instrument
 
-    def _show(self, _: object = None) -> None:
+    def _show(self) -> None:
         self.summary.value = text(str(self.survey)).value
         self.python_line.show(self.python)
 

@@ -18,7 +18,6 @@ if TYPE_CHECKING:
     from vortexwidgets.models.model import VortexModel
 
 _FIRST = {"circulation": 1.0, "swirl_scale": 10.0, "rotation_rate": 10.0, "core_radius": 0.01}
-_WITHOUT_CORE = ("free", "forced")
 
 
 def numbers_of(vortex: Vortex) -> dict[str, float]:
@@ -36,17 +35,16 @@ def vortex_like(vortex: Vortex | None, model: str) -> Vortex:
     """Return a vortex of another model with the numbers of this one where it has them, and common ones elsewhere."""
     entry = model_named(model)
     known = {} if vortex is None else {name: getattr(vortex, name) for name in _FIRST} | dict(vortex.shape)
-    if vortex is not None and vortex.model.key in _WITHOUT_CORE:
-        known.pop("core_radius")
-    numbers = {name: known.get(name, math.nan) for name in _own_names(entry)}
-    numbers = {name: number if math.isfinite(number) else _FIRST[name] for name, number in numbers.items()}
+    numbers = {name: known.get(name, 0.0) for name in _own_names(entry)}
+    # A model without a length or a circulation of its own answers 0, infinity or NaN.
+    numbers = {name: size if math.isfinite(size) and size else _FIRST[name] for name, size in numbers.items()}
     shape = {parameter.name: known.get(parameter.name, parameter.default) for parameter in entry.shape}
     centre = (0.0, 0.0) if vortex is None else vortex.centre
     return Vortex(entry.key, centre=centre, **numbers, **shape)
 
 
 def _own_names(model: VortexModel) -> tuple[str, ...]:
-    return (model.strength,) if model.key in _WITHOUT_CORE else (model.strength, "core_radius")
+    return (model.strength, "core_radius") if model.has_core else (model.strength,)
 
 
 class VortexControls(ipywidgets.VBox):
