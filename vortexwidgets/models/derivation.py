@@ -179,9 +179,7 @@ def _circulation(model: VortexModel) -> Step:
 def _equilibrium(model: VortexModel) -> Step:
     sentence = "The pressure gradient holds the fluid on its circle."
     if model.motion == "strained":
-        sentence += (
-            " This is the swirl's part; the strain adds -ρa²(r²/8 + z²/2) relative to the origin."
-        )
+        sentence += " This is the swirl's part; the strain adds -ρa²(r²/8 + z²/2) relative to the origin."
     return Step(
         "Radial equilibrium",
         sentence,

@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 import sympy as sp
-from sympy.codegen.rewriting import optimize, optims_numpy
+from sympy.codegen.rewriting import expm1_opt, log1p_opt, optimize
 from sympy.printing.numpy import NumPyPrinter
 from sympy.printing.precedence import PRECEDENCE
 
@@ -195,7 +195,7 @@ def _compiled(expressions: tuple[sp.Expr, ...], arguments: tuple[sp.Symbol, ...]
 
 
 def _optimized(expression: sp.Expr) -> sp.Expr:
-    return optimize(expression, optims_numpy)
+    return optimize(expression, (expm1_opt, log1p_opt)) if expression.has(sp.exp, sp.log) else expression
 
 
 def _clipped(expression: sp.Expr, x: sp.Symbol) -> sp.Expr:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, fields
-from functools import cached_property
+from functools import cache, cached_property
 from typing import Any, Literal
 
 import sympy as sp
@@ -199,28 +199,7 @@ class VortexModel:
     @cached_property
     def peak(self) -> tuple[sp.Expr, sp.Expr] | None:
         """(x, F) where the swirl is largest; None where it has no largest value at a finite distance."""
-        numbers = {symbol: parameter.default for symbol, parameter in zip(self.symbols, self.shape, strict=True)}
-        found: list[tuple[float, sp.Expr, sp.Expr]] = []
-        for swirl, _ in _branches(self.swirl):
-            slope = sp.numer(sp.together(_tidy(sp.diff(swirl, X))))
-            candidates = [*(sp.solve(slope, X) if slope.has(X) else []), *self.edges]
-            for at in candidates:
-                number = complex(at.subs(numbers).evalf(20))
-                if (
-                    number.real > 0.0
-                    and abs(number.imag) < 1e-15 * number.real
-                    and _holds(self.swirl, swirl, number.real)
-                ):
-                    value = sp.simplify(swirl.subs(X, at))
-                    found.append((float(sp.re(value.subs(numbers).evalf(20))), at, value))
-        if not found:
-            return None
-        size, at, value = max(found, key=lambda item: item[0])
-        # At an edge both branches hold; the swirl must fall on either side for this to be a peak.
-        beside = [
-            complex(self.swirl.subs(numbers).subs(X, float(at.subs(numbers)) * f).evalf(20)).real for f in (0.9, 1.1)
-        ]
-        return (at, value) if max(beside) < size else None
+        return _peak(self.swirl, tuple((p.expression, p.default) for p in self.shape))
 
     @cached_property
     def pressure_constant_expression(self) -> sp.Expr | None:
@@ -398,6 +377,30 @@ def _holds(profile: sp.Expr, swirl: sp.Expr, at: float) -> bool:
     bounds = [0.0, *edges, math.inf]
     number = [value for value, _ in profile.args].index(swirl)
     return bounds[number] <= at <= bounds[number + 1]
+
+
+@cache
+def _peak(profile: sp.Expr, defaults: tuple[tuple[sp.Symbol, float], ...]) -> tuple[sp.Expr, sp.Expr] | None:
+    """Place and size of the largest value; among several, that which is largest for the default shape."""
+    numbers = dict(defaults)
+    edges = [condition.rhs for _, condition in _branches(profile) if condition is not True and condition.is_Relational]
+    found: list[tuple[float, sp.Expr, sp.Expr]] = []
+    for swirl, _ in _branches(profile):
+        slope = sp.numer(sp.together(_tidy(sp.diff(swirl, X))))
+        stationary = sp.solve(slope, X, check=False, simplify=False) if slope.has(X) else []
+        for at in [*stationary, *edges]:
+            number = complex(at.subs(numbers).evalf(20))
+            is_real = number.real > 0.0 and abs(number.imag) < 1e-15 * number.real
+            if is_real and _holds(profile, swirl, number.real):
+                value = sp.simplify(swirl.subs(X, at))
+                found.append((float(sp.re(value.subs(numbers).evalf(20))), at, value))
+    if not found:
+        return None
+    size, at, value = max(found, key=lambda item: item[0])
+    # At an edge both branches hold; the swirl must fall on either side for this to be a peak.
+    place, curve = float(at.subs(numbers)), profile.subs(numbers)
+    beside = [float(curve.subs(X, place * factor).evalf(20)) for factor in (0.9, 1.1)]
+    return (at, value) if max(beside) < size else None
 
 
 def _tidy(expression: sp.Expr) -> sp.Expr:
