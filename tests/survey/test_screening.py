@@ -34,6 +34,12 @@ def test_a_coarse_plane_keeps_its_core(spacing):
     assert screen(survey).outliers == ()
 
 
+@pytest.mark.parametrize("velocity", [np.zeros(25), np.full(25, 2.0), np.linspace(-1.0, 1.0, 25)])
+def test_no_flow_a_uniform_one_and_a_shear_have_no_outliers(velocity):
+    survey = Survey.traverse(position=np.linspace(-1.0, 1.0, 25), velocity=velocity)
+    assert screen(survey).outliers == ()
+
+
 def test_good_samples_are_rarely_lost():
     # 200 traverses of 60 stations, noise 2 % of the peak (0.638 / 2π): at most one good sample in ten thousand.
     position = np.linspace(-8.0, 8.0, 60)

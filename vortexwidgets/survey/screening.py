@@ -165,7 +165,7 @@ def _ratio(velocity: FloatArray, neighbours: NDArray[np.intp], noise: FloatArray
     middle = np.median(around, axis=1)
     level = np.median(velocity)
     turns = (around.min(axis=1) < level - 3.0 * noise) & (around.max(axis=1) > level + 3.0 * noise)
-    floor = noise + 1e-9 * np.abs(velocity - level).max()
+    floor = noise + 1e-9 * np.abs(velocity - level).max() + np.finfo(float).tiny
     ratios = []
     for expected, distances in ((middle, np.abs(around - middle[:, None])), trend):
         ordered = np.sort(distances, axis=1)
