@@ -87,6 +87,18 @@ def test_units_on_the_command_line(tmp_path, capsys):
     assert "position -> position along the line" in run(capsys, "appraise", path, "--units", "position=mm")
 
 
+def test_long_sentences_are_wrapped_in_a_terminal(capsys, monkeypatch):
+    from vortexwidgets import command
+
+    monkeypatch.setattr("sys.stdout.isatty", lambda: True)
+    monkeypatch.setenv("COLUMNS", "60")
+    command._tell("  - " + "word " * 30 + "\nmodel    weight   " + "x" * 60)
+    lines = capsys.readouterr().out.splitlines()
+    assert all(len(line) <= 60 for line in lines[:-1])
+    assert lines[1].startswith("    word")
+    assert lines[-1].startswith("model    weight")
+
+
 def test_models_are_listed(capsys):
     printed = run(capsys, "models")
     for key in ("free", "forced", "rankine", "kaufmann", "vatistas", "lamb-oseen", "taylor", "burgers"):

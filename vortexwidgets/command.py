@@ -8,8 +8,10 @@ import html
 import importlib.util
 import json
 import os
+import shutil
 import subprocess
 import sys
+import textwrap
 from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, NoReturn
@@ -195,17 +197,24 @@ def _appraise(options: argparse.Namespace) -> None:
 
 
 def _report(survey: Survey, appraisal: Appraisal) -> None:
-    print(survey)
-    for line in (*survey.provenance.columns, *survey.provenance.notes):
-        print(f"  {line}")
-    for dropped in survey.provenance.dropped[:10]:
-        print(f"  row {dropped.row} dropped: {dropped.reason}")
-    if len(survey.provenance.dropped) > 10:
-        print(f"  and {len(survey.provenance.dropped) - 10} more rows; the record lists them all")
-    for sentence in appraisal.screening.sentences:
-        print(f"  {sentence}")
-    print()
-    print(appraisal.summary())
+    origin = survey.provenance
+    dropped = [f"row {item.row} dropped: {item.reason}" for item in origin.dropped[:10]]
+    if len(origin.dropped) > 10:
+        dropped.append(f"and {len(origin.dropped) - 10} more rows; the record lists them all")
+    lines = [*origin.columns, *origin.notes, *dropped, *appraisal.screening.sentences]
+    _tell("\n".join([str(survey), *(f"  {line}" for line in lines), "", appraisal.summary()]))
+
+
+def _tell(text: str) -> None:
+    """Print text, its long sentences wrapped where a person reads it in a terminal."""
+    width = shutil.get_terminal_size().columns if sys.stdout.isatty() else sys.maxsize
+    for line in text.splitlines():
+        indent = line[: len(line) - len(line.lstrip())]
+        if len(line) <= width or "  " in line.strip():  # a row of a table keeps its columns
+            print(line)
+        else:
+            hanging = indent + ("  " if line.strip().startswith("- ") else "")
+            print(textwrap.fill(line.strip(), max(width, 40), initial_indent=indent, subsequent_indent=hanging))
 
 
 def _named_models(text: str | None) -> list[str] | None:
