@@ -28,7 +28,7 @@ def mathml(latex: str, *, display: bool = True) -> str:
     latex : str
         Without dollar signs.
     display : bool
-        Whether it stands on a line of its own.
+        Whether it stands on a line of its own, with fractions and integrals in full size.
 
     Returns
     -------
@@ -43,21 +43,59 @@ def mathml(latex: str, *, display: bool = True) -> str:
     from latex2mathml.converter import convert
 
     try:
-        found = ElementTree.fromstring(str(convert(_simpler(latex), display="block" if display else "inline")))
+        found = ElementTree.fromstring(str(convert(_simpler(latex), display="inline")))
     except Exception:  # the converter's errors have no common ancestor below this one
         return _as_it_is(latex)
     if any(element.tag.removeprefix(_NAMESPACE) not in _ELEMENTS for element in found.iter()):
         return _as_it_is(latex)
     for element in found.iter():
         element.tag = element.tag.removeprefix(_NAMESPACE)
-        if element.tag == "mo" and (element.text or "").isalpha():  # the name of a function is spaced as a name
-            element.tag = "mi" if len(element.text or "") > 1 else "mtext"
-    found.set("xmlns", _NAMESPACE[1:-1])
-    found.attrib = {"xmlns": found.attrib.pop("xmlns"), **found.attrib}
+        text = element.text or ""
+        if element.tag == "mo" and (text.isalpha() or text == "∞"):  # spaced as a name, not as an operator
+            element.tag = "mtext" if len(text) == 1 and text.isalpha() else "mi"
+    found.attrib = {"xmlns": _NAMESPACE[1:-1], **found.attrib}
+    if display:
+        found.set("displaystyle", "true")
     outer = list(found)
     if len(outer) == 1 and outer[0].tag == "mrow":
         found[:] = list(outer[0])
     return ElementTree.tostring(found, encoding="unicode", short_empty_elements=False)
+
+
+def formulas(latex: str) -> list[str]:
+    r"""Return LaTeX as one formula for each part between wide spaces, so that a narrow page can break the line there.
+
+    Parameters
+    ----------
+    latex : str
+        Parts are separated by ``\quad`` or ``\qquad``, outside of braces and environments.
+
+    Returns
+    -------
+    list of str
+        Each as from `mathml`.
+
+    Examples
+    --------
+    >>> len(formulas(r"F(0) = 0, \quad K = \frac{1}{2}"))
+    2
+    """
+    return [mathml(part) for part in _parts(latex)]
+
+
+def _parts(latex: str) -> list[str]:
+    parts, depth, start = [], 0, 0
+    for found in re.finditer(r"\\\\|\\[{}]|[{}]|\\begin|\\end|\\(?:left|right)(?!arrow)|\\q?quad", latex):
+        sign = found[0]
+        if sign in ("{", "\\begin", "\\left"):
+            depth += 1
+        elif sign in ("}", "\\end", "\\right"):
+            depth -= 1
+        elif sign.endswith("quad") and depth == 0:
+            parts.append(latex[start : found.start()])
+            start = found.end()
+    parts.append(latex[start:])
+    return [part.strip().rstrip(",").strip() for part in parts if part.strip(" ,")]
 
 
 def _simpler(latex: str) -> str:

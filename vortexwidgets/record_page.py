@@ -9,7 +9,7 @@ from typing import Any
 
 from vortexwidgets.formatting import format_estimate, format_number
 from vortexwidgets.record_figures import consequence_figure, figures
-from vortexwidgets.record_maths import font_rule, mathml
+from vortexwidgets.record_maths import font_rule, formulas
 from vortexwidgets.record_texts import (
     Row,
     full_text,
@@ -277,7 +277,7 @@ def derivation_steps(appraisal: Any) -> dict[str, Any]:
 
     row = next((row for row in appraisal.models if not row.rejected), appraisal.models[0])
     steps = [
-        {"title": step.title, "formula": Markup(mathml(step.equation)), "sentence": step.sentence}
+        {"title": step.title, "formulas": [Markup(part) for part in formulas(step.equation)], "sentence": step.sentence}
         for step in derivation(row.key).steps
     ]
     return {"name": row.names[0], "source": appraisal.core.vortex.model.source, "steps": steps}
