@@ -119,7 +119,7 @@ def slider(page, label: str):
 
 def measure_latency(page, handle, figure: str, *, steps: int = 10) -> list[float]:
     """Move a slider by the keyboard and return, per step, the milliseconds until the picture in `figure` changed."""
-    page.evaluate(PIXELS)
+    page.evaluate("() => {" + PIXELS + "}")
     handle.focus()
     latencies = []
     for step in range(steps):

@@ -73,7 +73,12 @@ def type_into(page, label, text):
 
 
 def picture(page, artefacts, name):
+    """Keep a picture of the whole panel, in a window that is high enough for it."""
+    size = page.viewport_size
+    page.set_viewport_size({"width": size["width"], "height": 3300})
+    page.wait_for_timeout(200)
     page.locator(".vx-panel").first.screenshot(path=artefacts / f"{name}.png")
+    page.set_viewport_size(size)
 
 
 def test_the_appraisal_panel_shows_the_answer(appraisal_page):

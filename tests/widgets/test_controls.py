@@ -25,7 +25,7 @@ def dragged(control, position):
 
 def test_the_number_moves_the_slider_and_the_field(core_radius):
     core_radius.value = 0.025
-    assert core_radius.slider.value * core_radius.scale.factor == pytest.approx(0.025, rel=1e-12)
+    assert core_radius.slider.value * core_radius.scale.factor == pytest.approx(0.025, rel=0.02)  # the nearest step
     assert Scale.of_quantity("core_radius").read(core_radius.field.value) == 0.025
 
 
@@ -33,6 +33,12 @@ def test_the_slider_moves_the_number_and_the_field(core_radius):
     dragged(core_radius, 0.02 / core_radius.scale.factor)
     assert core_radius.value == pytest.approx(0.02, rel=1e-3)
     assert Scale.of_quantity("core_radius").read(core_radius.field.value) == core_radius.value
+
+
+def test_the_step_that_the_browser_reports_back_does_not_replace_an_exact_number(core_radius):
+    typed(core_radius, "1.2345678 mm")
+    dragged(core_radius, core_radius.slider.value * (1 + 1e-12))
+    assert core_radius.value == pytest.approx(1.2345678e-3, rel=1e-15)
 
 
 def test_one_drag_is_one_event(core_radius):
@@ -86,7 +92,7 @@ def test_what_was_typed_is_escaped(core_radius):
 def test_the_slider_widens_and_never_clamps(core_radius, metres):
     core_radius.value = metres
     assert core_radius.value == metres
-    assert core_radius.slider.value * core_radius.scale.factor == pytest.approx(metres, rel=1e-6)
+    assert core_radius.slider.value * core_radius.scale.factor == pytest.approx(metres, rel=0.02)
     typed(core_radius, f"{2 * metres!r} m")
     assert core_radius.value == 2 * metres
 
@@ -154,4 +160,4 @@ def test_a_field_answers_a_wrong_unit():
 def test_not_a_number_has_no_place_on_a_slider():
     control = NumberControl(Scale.of_quantity("circulation"), 1.0)
     control.value = math.inf
-    assert control.slider.value == pytest.approx(1.0)
+    assert control.slider.value == pytest.approx(1.0, rel=0.02)

@@ -110,6 +110,7 @@ def consequences_page(appraisal: Appraisal) -> str:
         blocks.append(
             f'<div class="vx-consequence vx-{html.escape(mark)}"><b>{html.escape(item.name)}</b> '
             f"{html.escape(format_estimate(item.estimate))}<br><span>{verdict}</span>"
+            f"{sentences(item.notes)}"
             f'<p class="vx-quiet">{html.escape(item.caution)}</p></div>'
         )
     return "".join(blocks) or '<p class="vx-quiet">Nothing follows that this package could judge.</p>'

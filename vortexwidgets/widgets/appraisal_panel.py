@@ -6,6 +6,7 @@ import json
 from typing import Any
 
 import ipywidgets
+import traitlets
 
 from vortexwidgets.appraisal import Appraisal, appraise
 from vortexwidgets.survey.survey import Survey
@@ -52,6 +53,7 @@ class AppraisalPanel(Panel):
         super().__init__(state, "From a survey to the pressure on the axis", figure, ())
         figure.on_pick(state.reported(self.points.toggle))
         self.children += self._content()
+        traitlets.dlink((self.hand, "error"), (state, "error"))
         state.observe(state.showing(self._show), ["survey", "models", "appraisal"])
         self._show()
         if survey is not None:

@@ -154,8 +154,8 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
             self.children = ()
             self._picture.close()
             _close_canvas(self.canvas)
-            self.figure.clear()
-            self.canvas = self._background = None
+            # The figure is not cleared: an interpreter that is shutting down comes here too, and could not do it.
+            self.canvas = self.figure = self.plot = self._background = None  # type: ignore[assignment]
         super().close()
 
     def _cancel(self) -> None:

@@ -144,16 +144,19 @@ class NumberControl(ipywidgets.VBox):
         self._shown = self.scale.write(value)
         self.field.value = self._shown
         self.refusal.say("")
-        position = _position(self.scale, value)
-        if position is not None and not math.isclose(position, self.slider.value, rel_tol=1e-9):
-            _widen(self.slider, position)
-            self._position = position
-            self.slider.value = position
+        coordinate = _coordinate(self.scale, value / self.scale.factor)
+        if coordinate is not None:
+            # The browser moves its handle to the nearest step and reports that back, so the slider gets the step and
+            # the number stays exact.
+            self._step = _room_for(self.slider, coordinate)
+            _move(self.slider, self.slider.min + self._step * self.slider.step)
 
     def _on_slider(self, change: Any) -> None:
-        if change.new == self._position:  # put there by _show, from the exact number
+        coordinate = _coordinate(self.scale, change.new)
+        step = None if coordinate is None else round((coordinate - self.slider.min) / self.slider.step)
+        if step == self._step:
             return
-        self._position = change.new
+        self._step = step
         size = float(f"{change.new:.4g}") * self.scale.factor  # the browser's positions carry noise in the last digits
         self.value = math.copysign(size, self.value) if self.scale.is_logarithmic else size
 
@@ -170,7 +173,7 @@ class NumberControl(ipywidgets.VBox):
         self._show(number)
 
     _shown = ""
-    _position: float | None = None
+    _step: int | None = None
 
 
 class QuantityField(ipywidgets.VBox):
@@ -258,20 +261,28 @@ def _slider(scale: Scale, *, continuous_update: bool) -> Any:
     return ipywidgets.FloatSlider(value=low, min=low, max=high, step=(high - low) / _STEPS, **options)
 
 
-def _position(scale: Scale, value: float) -> float | None:
-    """Return where the slider stands for a number, None where it has no place (zero among factors)."""
-    shown = value / scale.factor
-    if not scale.is_logarithmic:
-        return shown if math.isfinite(shown) else None
-    return abs(shown) if shown != 0.0 and math.isfinite(shown) else None
+def _coordinate(scale: Scale, shown: float) -> float | None:
+    """Return where a shown number lies along the slider, None where it has no place (zero among factors)."""
+    if not math.isfinite(shown) or (scale.is_logarithmic and shown == 0.0):
+        return None
+    return math.log10(abs(shown)) if scale.is_logarithmic else shown
 
 
-def _widen(slider: Any, position: float) -> None:
-    """Move the ends of the slider out to the position; it would clamp the number without a word."""
-    end = math.log10(position) if isinstance(slider, ipywidgets.FloatLogSlider) else position
-    # The ends are set a little beyond, so that rounding cannot leave the position outside.
-    room = 1e-9 * max(1.0, abs(end))
-    if end < slider.min:
-        slider.min = end - room
-    if end > slider.max:
-        slider.max = end + room
+def _room_for(slider: Any, coordinate: float) -> int:
+    """Move the ends of the slider out to a coordinate, by whole steps, and return the step it is at.
+
+    A slider that stays as it is would clamp the number without a word.
+    """
+    step: int = round((coordinate - slider.min) / slider.step)
+    last = round((slider.max - slider.min) / slider.step)
+    if step > last:
+        slider.max = slider.min + step * slider.step
+    if step < 0:
+        slider.min += step * slider.step
+    return max(step, 0)
+
+
+def _move(slider: Any, coordinate: float) -> None:
+    position = 10.0**coordinate if isinstance(slider, ipywidgets.FloatLogSlider) else coordinate
+    if not math.isclose(position, slider.value, rel_tol=1e-9, abs_tol=1e-9 * slider.step):
+        slider.value = position

@@ -9,7 +9,7 @@ import ipywidgets
 from vortexwidgets.survey.survey import Survey
 from vortexwidgets.uncertainty import Estimate
 from vortexwidgets.widgets.controls import QuantityField, choice
-from vortexwidgets.widgets.panel import folded
+from vortexwidgets.widgets.panel import folded, grid
 from vortexwidgets.widgets.state import SurveyState
 
 # Fact -> label. The order is the order in which a reviewer asks.
@@ -61,9 +61,9 @@ class FactsControls(ipywidgets.VBox):
             for name, (label, options, tip) in _CHOICES.items()
         }
         self.choices = {name: box.dropdown for name, box in boxes.items()}
-        more = ipywidgets.VBox([*(self.fields[name] for name in _SECOND), boxes["averaging"]])
-        first = [self.fields[name] for name in _FIRST]
-        self.children = (boxes["fluid"], *first, boxes["orientation"], folded("More facts", more))
+        first = [boxes["fluid"], *(self.fields[name] for name in _FIRST), boxes["orientation"]]
+        second = [*(self.fields[name] for name in _SECOND), boxes["averaging"]]
+        self.children = (grid(first), folded("More facts", grid(second)))
         for name, field in {**self.fields, **self.choices}.items():
             field.observe(state.reported(lambda change, name=name: self._state_fact(name, change.new)), "value")
         state.observe(lambda change: self._show(change.new), "survey")

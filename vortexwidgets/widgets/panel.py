@@ -154,6 +154,16 @@ def columns(narrow: Sequence[Any], wide: Sequence[Any]) -> Any:
     return box
 
 
+def grid(children: Sequence[Any]) -> Any:
+    """Return fields in as many columns as there is room for."""
+    box = ipywidgets.GridBox(
+        list(children),
+        layout={"grid_template_columns": "repeat(auto-fill, minmax(300px, 1fr))", "grid_gap": "2px 20px"},
+    )
+    box.add_class("vx-grid")
+    return box
+
+
 def buttons(*children: Any) -> Any:
     """Return buttons in a row that wraps."""
     row = ipywidgets.Box(list(children), layout={"display": "flex", "flex_flow": "row wrap"})
