@@ -198,9 +198,7 @@ def model_named(name: str | VortexModel) -> VortexModel:
     if isinstance(name, VortexModel):
         return name
     if not isinstance(name, str):
-        raise ValueError(
-            f"A model is named by text such as 'lamb-oseen', got {name!r:.60}. Known models: {', '.join(MODELS)}."
-        )
+        raise ValueError(f"A model is named by text, got {name!r:.60}. Known models: {', '.join(MODELS)}.")
     plain = _plain(name)
     known = {_plain(key): key for key in MODELS} | _ALSO_CALLED
     if plain in known:

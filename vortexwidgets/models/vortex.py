@@ -107,12 +107,13 @@ class Vortex:
         }
         if not given and strength is not None:
             given = dict([strength])
+        numbers = _shape(chosen, {**(shape or {}), **changes}, changes)
         radius = _core_radius(chosen, core_radius)
         object.__setattr__(self, "model", chosen)
         object.__setattr__(self, "strength", (chosen.strength, _strength(chosen, given, radius)))
         object.__setattr__(self, "core_radius", radius)
         object.__setattr__(self, "centre", _centre(centre))
-        object.__setattr__(self, "shape", MappingProxyType(_shape(chosen, {**(shape or {}), **changes}, changes)))
+        object.__setattr__(self, "shape", MappingProxyType(numbers))
 
     # Numbers --------------------------------------------------------------------------------------------------------
 
