@@ -58,6 +58,7 @@ ORDER = [
     "record_values",
     "record",
     "circumstances",
+    "cautions",
     "appraisal",
     "widgets.state",
     "widgets.controls",

@@ -13,6 +13,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from vortexwidgets import record
+from vortexwidgets.cautions import assumptions_of, may_have_missed, reference_sentence, survey_cautions
 from vortexwidgets.circumstances import fluid_of, instrument_of, site_of
 from vortexwidgets.consequences import assess_all
 from vortexwidgets.consequences.consequence import Consequence, Criterion
@@ -27,9 +28,9 @@ from vortexwidgets.core_pressure import (
     total_pressure_deficit,
 )
 from vortexwidgets.data_drop import DataDrop, data_drop
-from vortexwidgets.fitting.fit import Settings, fit_survey, settings_for
+from vortexwidgets.fitting.fit import Settings, settings_for
 from vortexwidgets.fitting.ranking import Ranking, rank_models
-from vortexwidgets.fitting.result import FitError, Loss, Uncertainties
+from vortexwidgets.fitting.result import Loss, Uncertainties
 from vortexwidgets.fluids import Fluid, Site
 from vortexwidgets.formatting import format_estimate, format_number, table
 from vortexwidgets.models.agreement import Agreement, AgreementRow, check_agreement
@@ -145,7 +146,7 @@ class Appraisal:
         if self.centred_drop.is_determined:
             if drop.bound is not None:
                 parts.append(f"{format_estimate(self.centred_drop)} if the line went through the axis")
-            parts[-1] += f" (k = 1) = {self.pressure_constant:.3g} ρ v_peak²"
+            parts[-1] += f" (k = 1) = {self.pressure_constant:.2f} ρ v_peak²"
         low, high = self.envelope
         if math.isfinite(high):
             number = sum(not row.rejected for row in self.models)
@@ -287,100 +288,122 @@ def appraise(
     settings = settings_for(
         screened, instrument=instrument, background=background, uncertainties=uncertainties, loss=loss
     )
-    keys = None if models is None else tuple(m if isinstance(m, str) else m.key for m in models)
     ranking = _rank(screened, models, settings)
     supported = ranking.supported
     best = supported[0] if supported else ranking.best
-    vortex = best.fit.vortex
-    screening = screen(survey, centre=best.fit.centre, peak_radius=vortex.peak_radius)
-    missed = survey.geometry == "traverse" and not survey.two_components and survey.miss_distance is None
-    cautions = _survey_cautions(screened, ranking, missed=missed)
-
-    last_radius = float(best.fit.radius.max())
-    beyond = share_beyond(vortex, last_radius)
-    ambient = site.axis_pressure(fluid)
-    limit = site.reference_radius
-    reference = _reference_sentence(ambient, limit)
-    if limit is None and beyond > _UNDETERMINED_BEYOND:
-        limit = last_radius
-        reference = f"relative to the pressure at the last station, {format_number(last_radius, 'm')} from the axis"
-        cautions.append(
-            f"{100 * beyond:.0f} % of the drop would come from beyond the survey, so the drop is given relative to "
-            "the last "
-            "station; measure farther out for the drop from the far field."
-        )
-    elif beyond > _CAUTION_BEYOND:
-        cautions.append(
-            f"{100 * beyond:.0f} % of the drop comes from beyond the last station, where only the model speaks; "
-            "measure farther out."
-        )
-    if not supported:
-        drop, envelope = Estimate(math.nan, math.nan, "core_pressure_drop"), (math.nan, math.nan)
-        cautions.insert(0, f"{NO_MODEL_FITS} The closest is {best.model.name}: {best.reason} The residuals are shown.")
-    else:
-        drop, envelope = combined_drop(supported, density=fluid.density, gain=survey.velocity_gain, beyond=limit)
-    centred = drop
-    if missed and drop.is_determined:
-        drop = Estimate(drop.interval(0.95)[0], math.nan, drop.quantity, bound="lower")
-    from_station = site.reference_radius is None and limit is not None
-    gas = fluid.heat_capacity_ratio
-    pressure = None
-    if ambient is not None and not from_station and not math.isnan(drop.value):
-        pressure = core_pressure_of(drop, ambient, heat_capacity_ratio=gas)
-    if gas is not None and ambient is not None and drop.value > _COMPRESSIBLE * ambient.value:
-        cautions.append(
-            f"The drop is {100 * drop.value / ambient.value:.1f} % of the ambient pressure: the gas expands, and the "
-            "core pressure "
-            "is taken through the isentropic relation instead of the constant-density drop."
-        )
-    peak_swirl = best.fit.estimate("peak_swirl")
-    constant = centred.value / (fluid.density.value * vortex.peak_swirl**2)
-    drops = named_drops(drop, vortex, wander=instrument.wander if instrument else 0.0) if supported else ()
-    core = Core(
-        vortex=vortex,
-        supported=tuple(row.fit.vortex for row in supported),
-        drop=drop,
-        tap_drop=drops[1].estimate if drops else drop,
-        ambient=None if from_station else ambient,
-        pressure=pressure,
-        envelope=envelope,
-        circulation=_with_common(best.fit.estimate("circulation"), survey) if "circulation" in best.fit.names
-        else circulation_at(best.fit, last_radius),
-        core_radius=best.fit.estimate("core_radius"),
-        peak_swirl=_with_common(peak_swirl, survey),
-        peak_radius=best.fit.estimate("peak_radius"),
-        density=fluid.density,
-        missed_axis=missed,
-    )  # fmt: skip
+    cautions = survey_cautions(screened, ranking)
+    answer = _answer(screened, ranking, fluid, site, cautions)
+    drops = named_drops(answer.drop, best.fit.vortex, wander=instrument.wander if instrument else 0.0)
+    core = _core(screened, ranking, fluid, answer, drops)
     return Appraisal(
         survey=screened,
         fluid=fluid,
         site=site,
         instrument=instrument,
         settings=settings,
-        model_keys=keys,
-        screening=screening,
+        model_keys=None if models is None else tuple(m if isinstance(m, str) else m.key for m in models),
+        screening=screen(survey, centre=best.fit.centre, peak_radius=core.vortex.peak_radius),
         models=_model_rows(ranking, fluid),
         criterion=ranking.criterion,
         core=core,
-        core_pressure_drop=drop,
-        centred_drop=centred,
-        core_pressure=pressure,
-        core_drops=drops,
-        envelope=envelope,
-        pressure_constant=constant,
-        edge_circulation=circulation_at(best.fit, last_radius),
-        share_beyond=beyond,
-        reference=reference,
-        data_drop=data_drop(screened, best.fit, density=fluid.density, model_drop=centred),
-        total_pressure_deficit=total_pressure_deficit(screened, best.fit, centred, density=fluid.density),
+        core_pressure_drop=answer.drop,
+        centred_drop=answer.centred,
+        core_pressure=answer.pressure,
+        core_drops=drops if supported else (),
+        envelope=answer.envelope,
+        pressure_constant=answer.centred.value / (fluid.density.value * core.vortex.peak_swirl**2),
+        edge_circulation=circulation_at(best.fit, float(best.fit.radius.max())),
+        share_beyond=answer.beyond,
+        reference=answer.reference,
+        data_drop=data_drop(screened, best.fit, density=fluid.density, model_drop=answer.centred),
+        total_pressure_deficit=total_pressure_deficit(screened, best.fit, answer.centred, density=fluid.density),
         consequences=assess_all(core, fluid, site) if supported else (),
         agreements=tuple(check_agreement(row.model.key) for row in (supported or (best,))[:3]),
-        assumptions=tuple(assumptions + _assumptions(survey, settings, instrument)),
+        assumptions=tuple(assumptions + assumptions_of(survey, settings, instrument)),
         cautions=tuple(cautions),
         versions=_versions(),
         created=datetime.now(UTC).isoformat(timespec="seconds"),
         _ranking=ranking,
+    )
+
+
+@dataclass(frozen=True)
+class _Answer:
+    """The drop, what it is relative to, and the pressure that follows."""
+
+    drop: Estimate
+    centred: Estimate
+    envelope: tuple[float, float]
+    beyond: float
+    reference: str
+    ambient: Estimate | None
+    pressure: Estimate | None
+
+
+def _answer(survey: Survey, ranking: Ranking, fluid: Fluid, site: Site, cautions: list[str]) -> _Answer:
+    """Combine the models that are not rejected; what limits the answer goes to the cautions."""
+    supported = ranking.supported
+    best = supported[0] if supported else ranking.best
+    last_radius = float(best.fit.radius.max())
+    beyond = share_beyond(best.fit.vortex, last_radius)
+    ambient = site.axis_pressure(fluid)
+    limit = site.reference_radius
+    reference = reference_sentence(ambient, limit)
+    if limit is None and beyond > _UNDETERMINED_BEYOND:
+        limit, ambient = last_radius, None
+        reference = f"relative to the pressure at the last station, {format_number(last_radius, 'm')} from the axis"
+        cautions.append(
+            f"{100 * beyond:.0f} % of the drop would come from beyond the survey, so the drop is given relative to the "
+            "last station; measure farther out for the drop from the far field."
+        )
+    elif beyond > _CAUTION_BEYOND:
+        cautions.append(
+            f"{100 * beyond:.0f} % of the drop comes from beyond the last station, where only the model speaks; "
+            "measure farther out."
+        )
+    if supported:
+        drop, envelope = combined_drop(supported, density=fluid.density, gain=survey.velocity_gain, beyond=limit)
+    else:
+        drop, envelope = Estimate(math.nan, math.nan, "core_pressure_drop"), (math.nan, math.nan)
+        cautions.insert(0, f"{NO_MODEL_FITS} The closest is {best.model.name}: {best.reason} The residuals are shown.")
+    centred = drop
+    if may_have_missed(survey) and drop.is_determined:
+        drop = Estimate(drop.interval(0.95)[0], math.nan, drop.quantity, bound="lower")
+    pressure = None
+    if ambient is not None and not math.isnan(drop.value):
+        pressure = core_pressure_of(drop, ambient, heat_capacity_ratio=fluid.heat_capacity_ratio)
+        if fluid.heat_capacity_ratio is not None and drop.value > _COMPRESSIBLE * ambient.value:
+            cautions.append(
+                f"The drop is {100 * drop.value / ambient.value:.1f} % of the ambient pressure: the gas expands, "
+                "and the core pressure is taken through the isentropic relation instead of the constant-density "
+                "drop."
+            )
+    return _Answer(drop, centred, envelope, beyond, reference, ambient, pressure)
+
+
+def _core(
+    survey: Survey, ranking: Ranking, fluid: Fluid, answer: _Answer, drops: tuple[CoreDrop, CoreDrop, CoreDrop]
+) -> Core:
+    supported = ranking.supported
+    fit = (supported[0] if supported else ranking.best).fit
+    if "circulation" in fit.names:
+        circulation = _with_common(fit.estimate("circulation"), survey)
+    else:
+        circulation = circulation_at(fit, float(fit.radius.max()))
+    return Core(
+        vortex=fit.vortex,
+        supported=tuple(row.fit.vortex for row in supported),
+        drop=answer.drop,
+        tap_drop=drops[1].estimate,
+        ambient=answer.ambient,
+        pressure=answer.pressure,
+        envelope=answer.envelope,
+        circulation=circulation,
+        core_radius=fit.estimate("core_radius"),
+        peak_swirl=_with_common(fit.estimate("peak_swirl"), survey),
+        peak_radius=fit.estimate("peak_radius"),
+        density=fluid.density,
+        missed_axis=may_have_missed(survey),
     )
 
 
@@ -393,75 +416,6 @@ def _rank(survey: Survey, models: Sequence[str | VortexModel] | None, settings: 
         uncertainties=settings.uncertainties,
         loss=settings.loss,
     )
-
-
-# Sentences ----------------------------------------------------------------------------------------------------------
-
-
-def _reference_sentence(ambient: Estimate | None, radius: float | None) -> str:
-    if radius is not None:
-        return f"relative to the pressure at {format_number(radius, 'm')} from the axis"
-    if ambient is None:
-        return "relative to the far field, whose pressure was not given"
-    return f"relative to p∞ = {format_estimate(ambient)} absolute at the elevation of the axis"
-
-
-def _survey_cautions(survey: Survey, ranking: Ranking, *, missed: bool) -> list[str]:
-    cautions = []
-    best = ranking.best
-    if missed:
-        cautions.append(
-            "One component was measured and no miss distance stated, so the line may have missed the axis: the drop "
-            "is a lower "
-            "bound. Measure the component along the line, or state the miss distance."
-        )
-    for text in dict.fromkeys(best.fit._open.values()):
-        cautions.append(text)
-    if survey.geometry == "traverse" and best.fit.background == "none":
-        try:
-            wider = fit_survey(
-                survey, best.model, background="uniform", uncertainties=best.fit.uncertainties, on_failure="return"
-            )
-        except (ValueError, FitError):
-            wider = None
-        unit = best.fit.scatter**2 if best.fit.uncertainties == "relative" else 1.0
-        if wider is not None and wider.converged and best.fit.chi_square - wider.chi_square > 10.0 * unit:
-            cautions.append(
-                "A uniform background flow would fit markedly better "
-                f"(chi² falls by {(best.fit.chi_square - wider.chi_square) / unit:.0f}); consider background='uniform'."
-            )
-    cautions.append(
-        "An intrusive probe can move or burst a core, seeding can leave it empty, a hot wire reads speed and not a "
-        "component, "
-        "and tunnel walls have images (common practice)."
-    )
-    return cautions
-
-
-def _assumptions(survey: Survey, settings: Settings, instrument: Instrument | None) -> list[str]:
-    sentences = ["The vortex is axisymmetric and in radial equilibrium, dp/dr = ρ v²/r."]
-    if instrument is None or instrument.wander == 0.0:
-        sentences.append("The vortex did not wander while it was measured; fluctuation is not included.")
-    else:
-        sentences.append(
-            f"The vortex wandered with a standard deviation of {format_number(instrument.wander, 'm')} along each axis."
-        )
-    if instrument is None or instrument.probe_width == 0.0:
-        sentences.append("The probe is small beside the core.")
-    else:
-        sentences.append(
-            f"The probe averages over {format_number(instrument.probe_width, 'm')} ({instrument.averaging})."
-        )
-    background = {"none": "No background flow is fitted.", "uniform": "A uniform background flow is fitted.",
-                  "linear": "A background flow with a constant gradient is fitted."}  # fmt: skip
-    sentences.append(background[settings.background])
-    if settings.uncertainties == "absolute":
-        sentences.append("The stated uncertainties are standard ones, independent from sample to sample.")
-    else:
-        sentences.append("The uncertainty of a sample is the scatter of the residuals.")
-    if survey.velocity_gain.uncertainty == 0.0:
-        sentences.append("The velocity gain is taken as exact; its uncertainty would enter the drop twice.")
-    return sentences
 
 
 def _model_rows(ranking: Ranking, fluid: Fluid) -> tuple[ModelRow, ...]:

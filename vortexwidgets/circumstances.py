@@ -10,6 +10,10 @@ from vortexwidgets.survey.survey import Survey
 from vortexwidgets.uncertainty import Estimate
 
 _ASSUMED_TEMPERATURE = (15.0, 5.0)  # °C, where a fluid is named without one; its doubt is carried
+_OF_THE_SITE = (
+    "ambient_pressure", "surface_pressure", "depth", "gravity", "orientation", "reference_radius", "translation_speed",
+    "tensile_strength", "gas_saturation", "inception", "elevation", "submergence",
+)  # fmt: skip
 
 
 def fluid_of(survey: Survey, assumptions: list[str]) -> Fluid:
@@ -28,17 +32,16 @@ def fluid_of(survey: Survey, assumptions: list[str]) -> Fluid:
     pressure = facts.get("ambient_pressure", facts.get("surface_pressure"))
     if pressure is not None:
         options["pressure"] = pressure
-    if "salinity" in facts:
-        options["salinity"] = facts["salinity"]
+    for option in ("salinity", "humidity"):
+        if option in facts:
+            options[option] = facts[option]
     return fluid_named(str(name), **options)
 
 
 def site_of(survey: Survey) -> Site:
     """Site of a survey, as far as its facts say."""
     facts = survey.facts
-    names = ("ambient_pressure", "surface_pressure", "depth", "gravity", "orientation", "reference_radius", "translation_speed",
-             "tensile_strength", "gas_saturation", "inception", "elevation", "submergence")  # fmt: skip
-    known: dict[str, Any] = {name: facts[name] for name in names if name in facts}
+    known: dict[str, Any] = {name: facts[name] for name in _OF_THE_SITE if name in facts}
     if "free_stream" in facts:
         known["speed"] = facts["free_stream"]
     if "free_stream_name" in facts:

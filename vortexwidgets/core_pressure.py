@@ -362,14 +362,23 @@ def total_pressure_deficit(survey: Survey, fit: Fit, drop: Estimate, *, density:
     radius = np.hypot(survey.x[chosen] - fit.centre[0], survey.y[chosen] - fit.centre[1])
     velocity = survey.velocity[chosen]
     peak = fit.vortex.peak_radius
-    near = radius <= max(0.5 * peak, float(np.sort(radius)[min(2, len(radius) - 1)]))
+    near = radius <= 0.5 * peak
+    if not near.any():
+        near = radius <= np.sort(radius)[min(2, len(radius) - 1)]
     far = radius >= 3.0 * peak
     if not far.any():
         far = radius >= np.quantile(radius, 0.8)
     inner, outer = float(velocity[near].mean()), float(velocity[far].mean())
-    u_inner = float(velocity[near].std(ddof=1)) / math.sqrt(near.sum()) if near.sum() > 1 else 0.0
-    u_outer = float(velocity[far].std(ddof=1)) / math.sqrt(far.sum()) if far.sum() > 1 else 0.0
+    own = None if survey.uncertainty is None else survey.uncertainty[chosen]
+    u_inner, u_outer = (_mean_uncertainty(velocity[part], None if own is None else own[part]) for part in (near, far))
     change = 0.5 * density.value * (outer**2 - inner**2)
     u_change = density.value * math.hypot(outer * u_outer, inner * u_inner)
     budget = (Contribution("static core pressure drop", drop.uncertainty), Contribution("axial velocity", u_change))
     return Estimate(drop.value + change, math.hypot(drop.uncertainty, u_change), "pressure_drop", budget=budget)
+
+
+def _mean_uncertainty(values: FloatArray, own: FloatArray | None) -> float:
+    """Standard uncertainty of a mean: from the scatter, but no less than the samples state."""
+    scatter = float(values.std(ddof=1)) / math.sqrt(values.size) if values.size > 1 else 0.0
+    stated = 0.0 if own is None else float(np.sqrt(np.sum(own**2))) / values.size
+    return max(scatter, stated)
