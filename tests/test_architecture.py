@@ -62,6 +62,8 @@ ORDER = [
     "appraisal",
     "widgets.state",
     "widgets.controls",
+    "widgets.frame",
+    "widgets.whole_frames",
     "widgets.canvas",
     "widgets.panel",
     "widgets.vortex_controls",

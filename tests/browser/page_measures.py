@@ -2,6 +2,8 @@
 
 import statistics
 
+from browser.lab_driver import settle
+
 # Pixels of the first picture below `selector`, whether ipympl's canvas or an image.
 PIXELS = """
 window.vxPixels = selector => {
@@ -127,7 +129,7 @@ def measure_latency(page, handle, figure: str, *, steps: int = 10) -> list[float
         page.wait_for_function("() => window.vxArmed")
         page.keyboard.press("ArrowRight" if step % 2 == 0 else "PageUp")
         latencies.append(page.evaluate("() => window.vxStep")["latency"])
-        page.wait_for_timeout(350)  # until the full drawing at rest is over
+        settle(page, quiet=400)  # until the full drawing at rest is over, which would pass for the next change
     return latencies
 
 

@@ -8,7 +8,8 @@ from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING, Any, Generic, Literal, Protocol, TypeVar
 
 import ipywidgets
-import numpy as np
+
+from vortexwidgets.widgets.frame import png_of
 
 if TYPE_CHECKING:
     from IPython.display import Image
@@ -125,6 +126,8 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
 
     def png(self, *, dots_per_inch: int = 150) -> bytes:
         """Return the figure as it is now as a PNG picture."""
+        if self._timer is not None:  # what moved last has not come to rest yet, and the axes are those of before
+            self.redraw()
         moving = list(self.plot.artists)
         for artist in moving:  # savefig leaves animated artists out
             artist.set_animated(False)
@@ -153,7 +156,8 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
             self.canvas.mpl_disconnect(self._connection)
             self.children = ()
             self._picture.close()
-            _close_canvas(self.canvas)
+            if isinstance(self.canvas, ipywidgets.Widget):
+                self.canvas.close()
             # The figure is not cleared: an interpreter that is shutting down comes here too, and could not do it.
             self.canvas = self.figure = self.plot = self._background = None  # type: ignore[assignment]
         super().close()
@@ -173,26 +177,15 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
         # Also after a zoom, a resize and a change of the screen's pixel ratio, which the canvas does by itself.
         self._background = self.canvas.copy_from_bbox(self.figure.bbox)
         self._paint()
-        self._send_whole_frames()
 
     def _show_frame(self) -> None:
         if self.is_interactive:
-            self._send_whole_frames()
             self.canvas.blit()
         else:
             self._send_picture()
 
-    def _send_whole_frames(self) -> None:
-        # ipympl would send differences, and its front end drops a frame that is followed too closely by the next one:
-        # a lost difference would leave holes.
-        self.canvas._force_full = True
-
     def _send_picture(self) -> None:
-        from PIL import Image
-
-        buffer = io.BytesIO()
-        Image.fromarray(np.asarray(self.canvas.buffer_rgba())).save(buffer, format="png", compress_level=1)
-        self._picture.value = buffer.getvalue()
+        self._picture.value = png_of(self.canvas)
 
     def _on_front_end(self, _: object, content: dict[str, Any], buffers: object) -> None:
         if content.get("type") == "initialized" and not self.is_interactive:
@@ -210,17 +203,6 @@ def _new_canvas(figure: Figure, *, interactive: bool) -> Any:
         from matplotlib.backends.backend_agg import FigureCanvasAgg
 
         return FigureCanvasAgg(figure)
-    from ipympl.backend_nbagg import Canvas, FigureManager
+    from vortexwidgets.widgets.whole_frames import WholeFrameCanvas
 
-    canvas = Canvas(figure)
-    FigureManager(canvas, 0)
-    canvas.header_visible = False
-    canvas.footer_visible = False
-    canvas.toolbar_position = "right"
-    return canvas
-
-
-def _close_canvas(canvas: Any) -> None:
-    if isinstance(canvas, ipywidgets.Widget):
-        canvas.manager.toolbar.close()
-        canvas.close()
+    return WholeFrameCanvas(figure)
