@@ -15,13 +15,14 @@ from colour_vision import contrast
 from hypothesis import given
 from hypothesis import strategies as st
 
-from vortexwidgets import record
+from vortexwidgets import record, record_page
 from vortexwidgets.appraisal import REGISTRY, Appraisal, appraise, load_appraisal
 from vortexwidgets.models.catalogue import MODELS
 from vortexwidgets.models.derivation import derivation
 from vortexwidgets.models.vortex import Vortex
 from vortexwidgets.record_maths import font_rule, formulas, mathml
 from vortexwidgets.survey.reading import example_survey
+from vortexwidgets.survey.samples import DroppedRow
 from vortexwidgets.survey.survey import Survey
 from vortexwidgets.uncertainty import Contribution, Estimate
 
@@ -40,6 +41,7 @@ class Note:
     _kept_for_itself: float = 0.0
 
 
+DROPPED = DroppedRow(0, "a value is missing")
 CLASSES = {"Note": Note, "Contribution": Contribution, "Estimate": Estimate}
 
 # JSON -----------------------------------------------------------------------------------------------------------------
@@ -469,3 +471,31 @@ def test_the_font_comes_along_and_holds_the_signs_of_the_derivations():
     invisible = {chr(code) for code in (0x2061, 0x2062, 0x2063, 0x2064)}
     missing = {sign for sign in used if not sign.isspace() and sign not in invisible and ord(sign) not in held}
     assert missing == set()
+
+
+# Limits ---------------------------------------------------------------------------------------------------------------
+
+
+def test_a_survey_that_never_enters_the_core_shows_limits_and_no_profile_that_nobody_measured():
+    # The core radius of this vortex is 25 mm; the nearest station is at 100 mm.
+    vortex = Vortex("lamb-oseen", circulation=3.1, core_radius=0.025)
+    radius = np.linspace(0.1, 0.5, 60)
+    survey = Survey.simulated(vortex, radius=radius, noise=0.2, seed=2, fluid="water", temperature=288.15)
+    limited = appraise(survey, models=["lamb-oseen"])
+    assert limited.core_pressure_drop.bound == "lower"
+    text = record.page(limited)
+    assert "at least" in section(text, "result")
+    assert "K in drop" not in section(text, "result")
+    assert "There is no budget" in section(text, "budget")
+    assert "Swirl, vorticity and pressure drop" not in text
+
+
+def test_many_dropped_rows_with_one_reason_take_one_line(appraisal):
+    rows = tuple(dataclasses.replace(DROPPED, row=row) for row in range(10, 400))
+    provenance = dataclasses.replace(appraisal.survey.provenance, dropped=rows)
+    aside = dict.fromkeys(range(3, 60), "outlier")
+    survey = dataclasses.replace(appraisal.survey, provenance=provenance, set_aside=aside)
+    text = record_page.content(dataclasses.replace(appraisal, survey=survey, _ranking=None))
+    assert len(text["dropped"]) == 1
+    assert text["dropped"][0][0] == 390
+    assert len(text["set_aside"]) == 1

@@ -147,7 +147,7 @@ class PlanePlot:
                           across=_BAR_ROOM + 0.78)  # fmt: skip
         elif with_profiles:
             place_in_grid([self.axes, self.profile_axes], columns=1, left=left, right=right, bottom=0.52, top=top,
-                          down=0.58, heights=(1.6, 1.0))  # fmt: skip
+                          down=0.58, heights=(1.9, 1.0))  # fmt: skip
         else:
             place_in_grid([self.axes], columns=1, left=left, right=right, bottom=0.52, top=top)
         at = self.axes.get_position(original=True)

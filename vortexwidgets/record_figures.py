@@ -33,11 +33,16 @@ class FigureData:
 def figures(appraisal: Any) -> dict[str, FigureData | None]:
     """The figures of the sections, by name."""
     from vortexwidgets.plots import PlanePlot, ProfilePlot, SurveyPlot
+    from vortexwidgets.profile_plot import MOST_VORTICES
     from vortexwidgets.record_plots import budget_plot, drop_plot, ranking_plot
 
     survey, models = appraisal.survey, appraisal.models
     best = models[0].names[0]
     plane = survey.geometry == "plane"
+
+    # A core that the survey leaves open stands at its limit, whose profile nobody measured.
+    supported = zip((row for row in models if not row.rejected), appraisal.core.supported, strict=False)
+    profiles = [vortex for row, vortex in supported if row.parameters["core_radius"].bound is None][:MOST_VORTICES]
 
     def draw_survey(figure: Figure, theme: Theme) -> None:
         plot = PlanePlot(figure, theme=theme.name) if plane else SurveyPlot(figure, theme=theme.name)
@@ -46,8 +51,7 @@ def figures(appraisal: Any) -> dict[str, FigureData | None]:
 
     def draw_profiles(figure: Figure, theme: Theme) -> None:
         plot = ProfilePlot(figure, theme=theme.name)
-        vortices = appraisal.core.supported or (appraisal.core.vortex,)
-        plot.update(vortices[:4], appraisal.fluid.density.value)
+        plot.update(profiles, appraisal.fluid.density.value)
         plot.settle()
 
     def draw_drops(figure: Figure, _: Theme) -> None:
@@ -63,19 +67,14 @@ def figures(appraisal: Any) -> dict[str, FigureData | None]:
     found: dict[str, FigureData | None] = {
         "survey": _figure(
             draw_survey,
-            (_WIDTH, 5.4 if plane else 4.6),
+            (_WIDTH, 7.0 if plane else 4.6),
             alt=f"Velocity vectors in the plane, and the swirl about the centre with curves of {len(models)} models."
             if plane
             else f"Measured velocities with error bars and the curves of {len(models)} models; the best is {best}. "
             "Below, what the best model leaves over.",
             caption="The survey and the models. Rejected models are thin; samples set aside are crosses.",
         ),
-        "profiles": _figure(
-            draw_profiles,
-            (_WIDTH, 5.8),
-            alt="Swirl, vorticity and pressure drop against the radius, for the models that are not rejected.",
-            caption="Profiles of the models that are not rejected, without what the instrument did.",
-        ),
+        "profiles": None,
         "weights": _figure(
             draw_weights,
             (_WIDTH, 0.75 + 0.3 * len(models)),
@@ -93,6 +92,13 @@ def figures(appraisal: Any) -> dict[str, FigureData | None]:
         ),
         "budget": None,
     }
+    if profiles:
+        found["profiles"] = _figure(
+            draw_profiles,
+            (_WIDTH, 5.8),
+            alt="Swirl, vorticity and pressure drop against the radius, for the models that are not rejected.",
+            caption="Profiles of the models that are not rejected, without what the instrument did.",
+        )
     parts = [part for part in appraisal.core_pressure_drop.budget if part.uncertainty > 0.0]
     if parts:
         found["budget"] = _figure(

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from functools import cache
 from pathlib import Path
 from typing import Any
@@ -24,6 +25,8 @@ from vortexwidgets.record_texts import (
     when,
     words,
 )
+
+_MOST_READINGS = 30  # more would fill pages
 
 
 def render(appraisal: Any) -> str:
@@ -64,7 +67,9 @@ def content(appraisal: Any) -> dict[str, Any]:
         "verdicts": [verdict_row(item, number) for number, item in enumerate(appraisal.consequences, 1)],
         "survey": str(survey),
         "provenance": survey.provenance,
-        "set_aside": [(index, _sample(survey, index), reason) for index, reason in survey.set_aside.items()],
+        "heading": " · ".join(dict.fromkeys(filter(None, (title, survey.provenance.file)))),
+        "dropped": by_reason([(row.row, row.reason) for row in survey.provenance.dropped]),
+        "set_aside": set_aside_rows(survey),
         "screening": appraisal.screening,
         "reach": number_text(appraisal.screening.reach, "peak radii"),
         "facts": [(words(name), shown(name, value)) for name, value in survey.facts.items()],
@@ -115,15 +120,39 @@ def result_rows(appraisal: Any) -> list[tuple[str, str, str]]:
         ("core radius of the best model", core.core_radius),
         ("circulation", core.circulation),
     ]
-    if appraisal.core_pressure_drop.bound is not None:
+    known = appraisal.centred_drop.is_determined
+    if appraisal.core_pressure_drop.bound is not None and known:
         estimates.insert(1, ("drop if the line went through the axis", appraisal.centred_drop))
     rows = [(name, value_text(estimate), interval_text(estimate)) for name, estimate in estimates]
-    rows.append(("K in drop = K ρ v_peak²", number_text(appraisal.pressure_constant, digits=3), ""))
+    if known:
+        rows.append(("K in drop = K ρ v_peak²", number_text(appraisal.pressure_constant, digits=3), ""))
     rows.append(("drop over the models not rejected", envelope(appraisal), ""))
     rows.append(("drop straight from the data, no model", value_text(appraisal.data_drop.estimate), ""))
     rows.append(("share of the drop from beyond the survey", percent(appraisal.share_beyond), ""))
     rows.append(("reference", appraisal.reference, ""))
     return rows
+
+
+def by_reason(rows: Sequence[tuple[int, str]]) -> list[tuple[int, str, str]]:
+    """Number, numbers of the rows, and reason; rows with one reason stand together.
+
+    Examples
+    --------
+    >>> by_reason([(5, "no number"), (9, "repeated header"), (12, "no number")])
+    [(2, '5, 12', 'no number'), (1, '9', 'repeated header')]
+    """
+    groups: dict[str, list[int]] = {}
+    for row, reason in rows:
+        groups.setdefault(reason, []).append(row)
+    return [(len(found), ", ".join(map(str, found)), reason) for reason, found in groups.items()]
+
+
+def set_aside_rows(survey: Any) -> list[tuple[str, str, str]]:
+    """Samples, reading and reason: one by one as long as they are few."""
+    aside = list(survey.set_aside.items())
+    if len(aside) > _MOST_READINGS:
+        return [(numbers, f"{count} samples", reason) for count, numbers, reason in by_reason(aside)]
+    return [(str(index), _sample(survey, index), reason) for index, reason in aside]
 
 
 def verdict_row(item: Any, number: int) -> dict[str, str]:
@@ -298,7 +327,7 @@ def envelope(appraisal: Any) -> str:
     if math.isnan(low):
         return "every model is rejected"
     if math.isinf(high):
-        return f"at least {format_number(low, 'Pa')}"
+        return f"at least {format_number(low, 'Pa', 3)}"
     return f"{format_number(low, 'Pa', 3)} to {format_number(high, 'Pa', 3)}"
 
 
@@ -306,9 +335,8 @@ def envelope(appraisal: Any) -> str:
 
 
 def _sample(survey: Any, index: int) -> str:
-    place = ", ".join(format_number(float(at), "m") for at in (survey.x[index], survey.y[index]) if at or at == 0.0)
-    if survey.geometry != "plane":
-        place = format_number(float(survey.x[index]), "m")
+    coordinates = (survey.x[index], survey.y[index]) if survey.geometry == "plane" else (survey.x[index],)
+    place = ", ".join(format_number(float(at), "m") for at in coordinates)
     return f"{format_number(float(survey.velocity[index]), 'm/s')} at {place}"
 
 

@@ -26,7 +26,7 @@ if TYPE_CHECKING:
 
     from vortexwidgets.uncertainty import Contribution, Estimate
 
-_COLOURS = 96  # of a picture; line art needs no more, and the file is a third
+_COLOURS = 200  # of a picture; line art needs no more, and the file is a third
 
 
 def drop_plot(axes: Axes, appraisal: Any) -> None:
@@ -54,15 +54,17 @@ def drop_plot(axes: Axes, appraisal: Any) -> None:
         axes.plot([shown_low, shown_high], [place, place], color=colour, linewidth=2.2, solid_capstyle="butt")
         face = colour if filled else theme.background
         axes.plot([estimate.value], [place], marker, color=colour, markerfacecolor=face, markersize=6.5)
-        for end, sign in ((low, "<"), (high, ">")):
-            if math.isinf(end):
-                axes.plot([estimate.value], [place], sign, color=colour, markersize=9.0)
     low, high = appraisal.envelope
     if math.isfinite(high) and high > low:
         axes.axvspan(low, high, color=theme.grid, alpha=0.6, linewidth=0.0, zorder=0.5)
     axes.set_yticks(range(len(rows)), [name for name, *_ in rows])
     axes.set_ylim(len(rows) - 0.4, -0.6)
     _widen(axes)
+    for place, (_, estimate, colour, *_) in enumerate(rows):
+        if estimate.bound is not None and math.isfinite(estimate.value):
+            edge = axes.get_xlim()[1 if estimate.bound == "lower" else 0]
+            looks = {"arrowstyle": "-|>", "color": colour, "linewidth": 2.2, "shrinkA": 0.0, "shrinkB": 0.0}
+            axes.annotate("", (edge, place), (estimate.value, place), arrowprops=looks)
     label_axis(axes, "x", "core pressure drop, 95 % interval", "Pa", ticks=6)
 
 
@@ -197,4 +199,4 @@ def _widen(axes: Axes) -> None:
     axes.relim()
     low, high = axes.get_xlim()
     low = min(low, 0.0) if low < 0.35 * high else low
-    axes.set_xlim(low, high)
+    axes.set_xlim(low, high + 0.08 * (high - low))
