@@ -21,8 +21,10 @@ Tie: TypeAlias = Callable[[float, list[float]], tuple[float, list[float]]]
 
 _STEPS = 60
 # Squared distances to the minimum, in standard uncertainties.
-_QUADRATIC = 1e-6  # from here on the iteration converges linearly at a constant rate
-_REMAINING = 1e-10  # predicted after the next step: the iteration ends
+_QUADRATIC = 1e-6  # from here on the model of chi-square is taken at its word
+_SLOW = 3  # steps in a row that hardly came closer, though all is but quadratic: a kink of the profile is there
+_NEAR = 9.0  # closer than this the curvature beyond first derivatives is learnt from the steps
+_REMAINING = 1e-14  # predicted after the next step: the iteration ends
 _LEVEL = 1e-9  # below this promise a step is taken without asking whether chi-square, by now rounding, fell
 _EPSILON = 1e-15  # of the power of the data: rounding of chi-square
 _ROUNDING = 1e-26  # of the power of the data: what is left when a model fits exactly
@@ -148,45 +150,51 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     before: _State | None = None
     last_step: list[float] = []
     last = math.inf
+    bend: list[list[float]] | None = None
     linear = state.level
     gram: FloatArray | None = None
     converged = False
-    steps = 0
+    steps = slow = 0
     while steps < _STEPS:
         steps += 1
-        solution, step, decrement = state.solution, state.step, state.decrement
-        if len(here) > SHAPE and (stuck := _at_bounds(here, free, step)):
-            solution, decrement = _without(state, stuck)
-            step = _relative(solution[columns.eliminated:], state.strength)
         noise = unit * state.chi_square
+        step, decrement = _solved(state.reduced)
+        if len(here) > SHAPE and (stuck := _at_bounds(here, free, step)):
+            step, decrement = _without(state.reduced, stuck)
+        elif before is not None and last < _NEAR * noise:
+            bend = _bent(bend, before, state, here[CORE_RADIUS], free, last_step)
+            other, promise = _solved(_sum(state.reduced, bend))
+            if 0.25 * decrement < promise < 4.0 * decrement:
+                step = other
         quadratic = decrement < _QUADRATIC * noise
-        if decrement <= _ROUNDING * power or (quadratic and decrement > 0.25 * last):
+        slow = slow + 1 if quadratic and decrement > 0.25 * last else 0
+        if decrement <= _ROUNDING * power or slow == _SLOW:
             converged = True
             break
         if quadratic and decrement * min(decrement / last, 1.0) < _REMAINING * noise:
-            # What is left after this step shrinks by a known factor: take the whole series at once.
-            ratio = _ratio(step, last_step)
-            series = 1.0 / (1.0 - ratio)
             if before is not None and tie is None:
-                gram = state.gram + series * ratio * (state.gram - before.gram)
-            here = _moved(here, free, [series * value for value in step])
-            linear = [now + series * (then - now) for now, then in zip(state.level, solution, strict=False)]
+                gram = state.gram + _share(step, last_step) * (state.gram - before.gram)
+            here = _moved(here, free, step)
+            linear = _back(state.upper, [state.strength * value for value in step])
             converged = True
             break
         if damping:
-            step = _damped(state, damping)
+            step = _damped(state.reduced, damping)
         trial = _moved(here, free, step)
         new = columns.at(trial)
         if new.chi_square <= state.chi_square + _EPSILON * power or decrement < _LEVEL * noise:
-            here, before, state, linear = trial, state, new, new.level
-            last, last_step = (decrement, step) if not damping else (math.inf, [])
+            if damping:
+                before, last, bend = None, math.inf, None
+            else:
+                before, last, last_step = state, decrement, _step_between(here, trial, free)
+            here, state, linear = trial, new, new.level
             damping = 0.1 * damping if damping > 1e-4 else 0.0
         elif damping < 1e10:
             damping = max(10.0 * damping, 1e-3)
         else:
             break
     if tie is not None:
-        linear = [state.strength, *linear]
+        linear = [tie(here[CORE_RADIUS], here[SHAPE:])[0], *linear]
     return Solution(problem, here, free, linear, steps, converged, state.chi_square, gram)
 
 
@@ -199,14 +207,13 @@ def misfit(problem: Problem, here: list[float]) -> float:
 class _State:
     """Where the iteration stands: everything follows from the inner products of the columns."""
 
+    core_radius: float
     gram: FloatArray  # inner products of the columns, shape (P + 1, P + 1)
-    eliminated: int
     strength: float
     level: list[float]  # what is linear, eliminated at this point
-    solution: list[float]  # the same after the step, then the step times the strength
-    step: list[float]  # relative, of the free nonlinear parameters
+    upper: list[list[float]]  # the rows that did it
+    reduced: list[list[float]]  # curvature of chi-square/2 by the nonlinear parameters, and last in each row its fall
     chi_square: float
-    decrement: float  # of chi-square, promised by the step
 
 
 class _Columns:
@@ -229,6 +236,7 @@ class _Columns:
         self.response = np.empty_like(samples.target) if tied else rows[0]
         self.filled = [self.response, *rows[self.eliminated : -1]]
         self.target = rows[-1]
+        self.still = [0.0] * len(free)
         self.transposed = self.matrix.T
         self.prior = samples.prior if samples.prior is not None and samples.prior[0] in free else None
 
@@ -239,11 +247,16 @@ class _Columns:
         gram = self.matrix.dot(self.transposed)
         if self.prior is not None:
             self._add_prior(self.prior, gram, here, strength)
-        level, solution, chi_square, decrement = _solved(gram.tolist(), self.eliminated)
+        upper, rest, chi_square = _reduced(gram.tolist(), self.eliminated)
+        level = _back(upper, self.still)
         if self.tie is None:
             strength = level[0]
-        step = _relative(solution[self.eliminated :], strength)
-        return _State(gram, self.eliminated, strength, level, solution, step, chi_square, decrement)
+        square = strength * strength
+        for row in rest:
+            fall = strength * row.pop()
+            row[:] = [square * value for value in row]
+            row.append(fall)
+        return _State(here[CORE_RADIUS], gram, strength, level, upper, rest, chi_square)
 
     def _tied(self, here: list[float], tie: Tie) -> float:
         """Take the swirl that is not free off the target, and turn the derivatives along the tie."""
@@ -254,13 +267,12 @@ class _Columns:
         np.subtract(self.problem.samples.target, strength * self.response, out=self.target)
         return strength
 
-    def _add_prior(
-        self, prior: tuple[int, float, float], gram: FloatArray, here: list[float], strength: float
-    ) -> None:
+    def _add_prior(self, prior: tuple[int, float, float], gram: FloatArray, here: list[float], strength: float) -> None:
         """Add the row of a parameter that is known beforehand, as a sample of its own."""
         index, _, uncertainty = prior
         if self.tie is None:
-            strength = _solved(gram.tolist(), self.eliminated)[0][0]
+            upper, _, _ = _reduced(gram.tolist(), self.eliminated)
+            strength = _back(upper, self.still)[0]
         off, row = _pull(prior, here), self.eliminated + self.free.index(index)
         # In units of the matrix a relative step is strength times the step.
         weight = here[CORE_RADIUS] / uncertainty / strength if strength else 0.0
@@ -276,82 +288,129 @@ def _pull(prior: tuple[int, float, float], here: list[float]) -> float:
     return (value - here[index]) / uncertainty
 
 
-def _solved(matrix: list[list[float]], eliminated: int) -> tuple[list[float], list[float], float, float]:
-    """Solve the normal equations, whose right side is the last row and column, from the upper left on.
+def _reduced(products: list[list[float]], eliminated: int) -> tuple[list[list[float]], list[list[float]], float]:
+    """Eliminate the first unknowns of normal equations whose right side is the last row and column.
 
     Returns
     -------
-    level : list of float
-        Solution of the first `eliminated` rows alone.
-    solution : list of float
-        Solution of all.
+    upper : list of list of float
+        Rows that give the first unknowns once the others are known.
+    rest : list of list of float
+        Normal equations of the others, right side last in each row.
     chi_square : float
-        What the first rows leave of the lower right element.
-    decrement : float
-        What the other rows take off it.
-
-    Notes
-    -----
-    Gaussian elimination without pivoting, as fits a positive matrix. A row that depends on those above is left out, its
-    unknown 0.
+        What is left of the lower right element.
     """
-    size = len(matrix) - 1
-    if size == 3 and eliminated == 1 and (short := _solved_by_hand(matrix)):
-        return short
-    upper: list[list[float]] = []
-    chi_square, decrement = matrix[size][size], 0.0
-    for i in range(size):
-        row = matrix[i][:]
-        for j, above in enumerate(upper):
+    if eliminated == 1 and len(products) == 4 and products[0][0] > 0.0:
+        return _reduced_by_hand(products)
+    rows = _eliminate(products, eliminated)
+    rest = [row[eliminated:] for row in rows[eliminated:]]
+    for i, row in enumerate(rest):
+        for k in range(i):
+            row[k] = rest[k][i]
+    return rows[:eliminated], rest[:-1], rest[-1][-1]
+
+
+def _reduced_by_hand(products: list[list[float]]) -> tuple[list[list[float]], list[list[float]], float]:
+    """The same for one unknown and two others, which is a traverse; five times faster than the loops."""
+    first, (_, d, e, u), (_, _, f, v), (_, _, _, chi_square) = products
+    a, b, c, t = first
+    by_b, by_c = b / a, c / a
+    e -= by_b * c
+    rest = [[d - by_b * b, e, u - by_b * t], [e, f - by_c * c, v - by_c * t]]
+    return [first], rest, chi_square - t / a * t
+
+
+def _solved(reduced: list[list[float]]) -> tuple[list[float], float]:
+    """Step to the minimum of a quadratic, and the decrease of chi-square that it promises."""
+    if len(reduced) == 2:
+        (d, e, u), (_, f, v) = reduced
+        least = _SINGULAR * f
+        if d > 0.0:
+            factor = e / d
+            f -= factor * e
+            v -= factor * u
+            if f > least:
+                second = v / f
+                return [(u - e * second) / d, second], u / d * u + second * v
+    rows = _eliminate(reduced, len(reduced))
+    return _back(rows, []), sum([row[-1] / row[i] * row[-1] for i, row in enumerate(rows)])
+
+
+def _eliminate(matrix: list[list[float]], count: int) -> list[list[float]]:
+    """Gaussian elimination of the first `count` unknowns, without pivoting, as fits a positive matrix.
+
+    Only the upper triangle is right afterwards. A row that depends on those above is left out, its unknown 0.
+    """
+    rows: list[list[float]] = []
+    for i, source in enumerate(matrix):
+        row = source[:]
+        for j in range(min(i, count)):
+            above = rows[j]
             factor = above[i] / above[j]
-            for k in range(i, size + 1):
+            for k in range(i, len(row)):
                 row[k] -= factor * above[k]
-        if not row[i] > _SINGULAR * matrix[i][i]:
+        if i < count and not row[i] > _SINGULAR * source[i]:
             row[i] = math.inf
-        upper.append(row)
-        if i < eliminated:
-            chi_square -= row[size] / row[i] * row[size]
-        else:
-            decrement += row[size] / row[i] * row[size]
-    return _back(upper, eliminated), _back(upper, size), chi_square, decrement
+        rows.append(row)
+    return rows
 
 
-def _back(upper: list[list[float]], size: int) -> list[float]:
-    """Solve the first rows of an upper triangle whose last column is the right side."""
-    solution = [0.0] * size
-    for i in range(size - 1, -1, -1):
-        row = upper[i]
+def _back(rows: list[list[float]], known: list[float]) -> list[float]:
+    """Unknowns of an upper triangle, those after them being known; the right side is last in each row."""
+    count = len(rows)
+    solution = [0.0] * count + known
+    for i in range(count - 1, -1, -1):
+        row = rows[i]
         value = row[-1]
-        for k in range(i + 1, size):
+        for k in range(i + 1, len(solution)):
             value -= row[k] * solution[k]
         solution[i] = value / row[i]
-    return solution
+    return solution[:count]
 
 
-def _solved_by_hand(matrix: list[list[float]]) -> tuple[list[float], list[float], float, float] | None:
-    """The same for a strength and two others, in the same order; six times faster than the loops. None if singular."""
-    (a, b, c, t), (_, d, e, u), (_, _, f, v), (_, _, _, chi_square) = matrix
-    if not a > 0.0:
-        return None
-    d_least, f_least = _SINGULAR * d, _SINGULAR * f
-    factor = b / a
-    d -= factor * b
-    e -= factor * c
-    u -= factor * t
-    factor = c / a
-    f -= factor * c
-    v -= factor * t
-    if not d > d_least:
-        return None
-    factor = e / d
-    f -= factor * e
-    v -= factor * u
-    if not f > f_least:
-        return None
-    z = v / f
-    y = (u - e * z) / d
-    level = t / a
-    return [level], [(t - b * y - c * z) / a, y, z], chi_square - level * t, u / d * u + z * v
+def _bent(
+    bend: list[list[float]] | None,
+    before: _State,
+    state: _State,
+    core_radius: float,
+    free: tuple[int, ...],
+    step: list[float],
+) -> list[list[float]]:
+    """What the last step showed of the curvature that the products of first derivatives leave out.
+
+    The fall of chi-square changed by more than those products, averaged over the step, account for; the least
+    symmetric matrix that makes up for it is added (least in the metric of the products).
+    """
+    if bend is None:
+        bend = [[0.0] * len(free) for _ in free]
+    # Lengths of the centre were counted in another core radius before.
+    ratio = core_radius / before.core_radius
+    units = [ratio if index < CORE_RADIUS else 1.0 for index in free]
+    missing, pull = [], []
+    for old, new, known, unit in zip(before.reduced, state.reduced, bend, units, strict=True):
+        value = unit * old[-1] - new[-1]
+        mean = 0.0
+        for k, change in enumerate(step):
+            mean += 0.5 * (unit * units[k] * old[k] + new[k]) * change
+            value -= known[k] * change
+        missing.append(value - mean)
+        pull.append(mean)
+    size = sum([a * b for a, b in zip(pull, step, strict=True)])
+    if not size > 0.0:
+        return bend
+    pull = [value / size for value in pull]
+    along = sum([a * b for a, b in zip(missing, step, strict=True)])
+    missing = [m - 0.5 * along * p for m, p in zip(missing, pull, strict=True)]
+    return [
+        [known + a * q + p * b for known, b, q in zip(row, missing, pull, strict=True)]
+        for row, a, p in zip(bend, missing, pull, strict=True)
+    ]
+
+
+def _sum(reduced: list[list[float]], bend: list[list[float]]) -> list[list[float]]:
+    return [
+        [*[a + b for a, b in zip(row, more, strict=False)], row[-1]] for row, more in zip(reduced, bend, strict=True)
+    ]
 
 
 def _inverse(matrix: list[list[float]], size: int) -> list[list[float]]:
@@ -380,35 +439,38 @@ def _inverse(matrix: list[list[float]], size: int) -> list[list[float]]:
     return inverse
 
 
-def _damped(state: _State, damping: float) -> list[float]:
-    """The step with the diagonal of the nonlinear parameters raised (Levenberg-Marquardt)."""
-    products = state.gram.tolist()
-    for i in range(state.eliminated, len(products) - 1):
-        products[i][i] *= 1.0 + damping
-    _, solution, _, _ = _solved(products, state.eliminated)
-    return _relative(solution[state.eliminated :], state.strength)
+def _damped(reduced: list[list[float]], damping: float) -> list[float]:
+    """The step with the diagonal raised (Levenberg-Marquardt)."""
+    raised = [row[:] for row in reduced]
+    for i, row in enumerate(raised):
+        row[i] *= 1.0 + damping
+    return _solved(raised)[0]
 
 
-def _without(state: _State, stuck: list[int]) -> tuple[list[float], float]:
-    """Solution and promised decrease with some nonlinear parameters held."""
-    size, eliminated = len(state.solution), state.eliminated
-    keep = [row for row in range(size) if row - eliminated not in stuck]
-    products = state.gram[np.ix_([*keep, size], [*keep, size])].tolist()
-    _, solution, _, decrement = _solved(products, eliminated)
-    solved = dict(zip(keep, solution, strict=True))
-    return [solved.get(row, 0.0) for row in range(size)], decrement
+def _without(reduced: list[list[float]], stuck: list[int]) -> tuple[list[float], float]:
+    """Step and promised decrease with some parameters held."""
+    keep = [position for position in range(len(reduced)) if position not in stuck]
+    short, decrement = _solved([[reduced[row][column] for column in [*keep, -1]] for row in keep])
+    step = [0.0] * len(reduced)
+    for position, value in zip(keep, short, strict=True):
+        step[position] = value
+    return step, decrement
 
 
-def _relative(step: list[float], strength: float) -> list[float]:
-    """From a step times the strength to a relative step."""
-    return [value / strength for value in step] if strength else [0.0] * len(step)
-
-
-def _ratio(step: list[float], last: list[float]) -> float:
-    """Ratio of the geometric series of steps (Aitken); 0 where two of them do not show one."""
+def _share(step: list[float], last: list[float]) -> float:
+    """How much further along the last step this one goes."""
     size = sum([value * value for value in last])
-    ratio = sum([a * b for a, b in zip(step, last, strict=True)]) / size if size else 0.0
-    return ratio if abs(ratio) < 0.5 else 0.0
+    return sum([a * b for a, b in zip(step, last, strict=True)]) / size if size else 0.0
+
+
+def _step_between(here: list[float], there: list[float], free: tuple[int, ...]) -> list[float]:
+    """The relative step that was taken, in core radii of where it went."""
+    return [
+        (there[index] - here[index]) / there[CORE_RADIUS]
+        if index < CORE_RADIUS
+        else math.log(there[index] / here[index])
+        for index in free
+    ]
 
 
 def _moved(here: list[float], free: tuple[int, ...], step: list[float]) -> list[float]:
