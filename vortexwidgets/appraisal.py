@@ -186,6 +186,10 @@ class Appraisal:
         return "\n".join(lines)
 
     def _pressure_line(self) -> str:
+        if math.isnan(self.core_pressure_drop.value):
+            return "not given, because no model fits."
+        if self.core_pressure is None and self.core.ambient is None and self.site.ambient_pressure is not None:
+            return "not given, because the drop is known to the last station only."
         if self.core_pressure is None:
             return "not given, because no reference pressure was; give ambient_pressure, or surface_pressure and depth."
         return f"{self.core_pressure} absolute."

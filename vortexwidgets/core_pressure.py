@@ -204,10 +204,9 @@ def combined_drop(
         drops = [
             _scaled(drop, 1.0 - share_beyond(row.fit.vortex, beyond)) for drop, row in zip(drops, rows, strict=True)
         ]
-    bounds = [drop for drop in drops if drop.bound is not None]
-    if bounds:
+    if not all(drop.is_determined for drop in drops):
         # One profile that leaves the core open leaves the answer open: the shallowest of all lower limits stands.
-        lowest = min(drop.value if drop.bound else drop.interval(0.95)[0] for drop in drops)
+        lowest = max(min(drop.interval(0.95)[0] for drop in drops), 0.0)
         relative = 1.96 * math.hypot(2.0 * gain.uncertainty, density.uncertainty / density.value)
         lowest *= max(1.0 - relative, 0.0)
         return Estimate(lowest, math.nan, "core_pressure_drop", bound="lower"), (lowest, math.inf)

@@ -30,6 +30,8 @@ if TYPE_CHECKING:
 
 FloatArray = npt.NDArray[np.float64]
 
+LOOK_AGAIN = "Check units and columns, measure closer to the axis, or take more points."
+
 _ROBUST_ROUNDS = 50
 _SCAN = tuple(2.0 ** (k / 2.0) for k in range(-4, 5))  # of the core radius about the search's
 
@@ -172,10 +174,10 @@ def fit_problem(
     """Fit from one or several starts and keep the lowest minimum."""
     samples = len(problem.samples.target) + (problem.samples.prior is not None)
     number = 1 + len(problem.samples.background) + len(free)
-    if samples < number:
+    if samples <= number:
         raise ValueError(
-            f"Survey has {samples} points but {problem.model.name} has {number} free parameters here; "
-            "add points, fix a parameter or choose a smaller background."
+            f"Survey has {samples} points but {problem.model.name} has {number} free parameters here, which leaves "
+            "nothing to judge the fit by; add points, fix a parameter or choose a smaller background."
         )
     solution = _lowest([solve(problem, start, free) for start in starts])
     if len(starts) > 1 and (
@@ -254,7 +256,7 @@ def _refuse_failure(fit: Fit) -> None:
         )
     # Only a weak drop of chi-square is worth the question whether there is a vortex at all.
     if fit._problem.samples.power < 10.0 * fit.chi_square + 1e3 and not fit._is_seen:
-        raise FitError(Status.NO_VORTEX.value + " Check the sign, the units and the centre, or measure closer.", fit)
+        raise FitError(f"{Status.NO_VORTEX.value} {LOOK_AGAIN}", fit)
 
 
 @lru_cache(maxsize=64)

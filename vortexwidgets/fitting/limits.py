@@ -5,10 +5,11 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
-from vortexwidgets.fitting.problem import CORE_RADIUS, Problem
+from vortexwidgets.fitting.problem import CORE_RADIUS, Problem, Samples
 from vortexwidgets.fitting.separable import Solution, Tie, solve
 
 _TOLERANCE = 2e-3  # of the distance sought, in standard uncertainties
@@ -143,10 +144,24 @@ def _log_slope(measure: Callable[..., float], shape: list[float], which: int) ->
     return float((math.log(measure(*up)) - math.log(measure(*down))) / (2.0 * h))
 
 
-def null_chi_square(problem: Problem) -> float:
-    """Chi-square of the background alone, without any vortex."""
-    if len(problem.samples.background) == 0:
-        return problem.samples.power
-    level = np.linalg.lstsq(problem.samples.background.T, problem.samples.target, rcond=None)[0]
-    rest = problem.samples.target - level @ problem.samples.background
-    return float(rest @ rest)
+    """Chi-square without any vortex: of the background alone or a uniform flow; and how many columns that adds.
+    """Chi-square without any vortex, of background or uniform flow alone; and how many columns the latter adds.
+
+    A vortex far away looks like a uniform flow, so that is what a vortex of unknown centre has to beat.
+    """
+    return _without_vortex(problem.samples, uniform)
+
+
+@lru_cache(maxsize=32)  # the same for every model and start
+def _without_vortex(samples: Samples, uniform: bool) -> tuple[float, int]:
+    columns = list(samples.background)
+    added = 0
+    if uniform and not len(columns):
+        columns = [column for column in samples.toward if column.any()]
+        added = len(columns)
+    if not columns:
+        return samples.power, 0
+    basis = np.array(columns)
+    level = np.linalg.lstsq(basis.T, samples.target, rcond=None)[0]
+    rest = samples.target - level @ basis
+    return float(rest @ rest), added

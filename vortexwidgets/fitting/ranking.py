@@ -9,7 +9,15 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from vortexwidgets.fitting.fit import Settings, fit_problem, free_parameters, problem_for, settings_for, starts_for
+from vortexwidgets.fitting.fit import (
+    LOOK_AGAIN,
+    Settings,
+    fit_problem,
+    free_parameters,
+    problem_for,
+    settings_for,
+    starts_for,
+)
 from vortexwidgets.fitting.result import Fit, FitError, Loss, Status, Uncertainties
 from vortexwidgets.fitting.starting import search
 from vortexwidgets.formatting import table
@@ -155,11 +163,11 @@ def rank_models(
     fits, failures = _fits(survey, [model for model, _ in profiles], settings, fixed or {})
     kept = [(model, names, fit) for (model, names), fit in zip(profiles, fits, strict=True) if fit is not None]
     if not kept:
-        raise FitError("No model could be fitted. " + " ".join(failures))
+        if all(Status.STOPPED.value in failure for failure in failures):
+            raise FitError(f"{Status.NO_VORTEX.value} None of the models comes to rest on them. {LOOK_AGAIN}")
+        raise FitError("No model could be fitted. " + failures[0])
     if not any(fit._is_seen for _, _, fit in kept):
-        raise FitError(
-            Status.NO_VORTEX.value + " Check the sign, the units and the centre, or measure closer.", kept[0][2]
-        )
+        raise FitError(f"{Status.NO_VORTEX.value} {LOOK_AGAIN}", kept[0][2])
     known = settings.uncertainties == "absolute"
     criteria = np.array([_aicc(fit, known=known) for _, _, fit in kept])
     criteria -= criteria.min()
@@ -275,8 +283,8 @@ def _relative_tests(fits: Sequence[Fit]) -> list[tuple[float, str]]:
         if rows[list(fits).index(best)][0] >= REJECTION:
             return rows
     shared = (
-        " Repeated readings scatter less than the residuals of every model: readings at one station share an error, and "
-        "stations are counted instead."
+        " Repeated readings scatter less than the residuals of every model: readings at one station share an error, "
+        "and stations are counted instead."
         if freedom >= 5
         else ""
     )

@@ -223,16 +223,23 @@ class Fit:
 
     @cached_property
     def _is_seen(self) -> bool:
-        rise = null_chi_square(self._problem) - self.chi_square
-        extra = len(self._solution.free) + 1
+        null, added = null_chi_square(self._problem, uniform=CENTRE_X in self._solution.free)
+        rise = null - self.chi_square
+        extra = max(len(self._solution.free) + 1 - added, 1)
         unit = self._variance
-        if rise > 1e3 * extra * unit:
-            return True
-        from scipy.special import chdtrc
-
         if unit == 0.0:
             return rise > 0.0
-        return bool(chdtrc(extra, max(rise, 0.0) / unit) < _NO_VORTEX)
+        samples = self.degrees_of_freedom + len(self.names)
+        if rise > 1e3 * extra * unit and self.degrees_of_freedom > 10:
+            return True
+        from scipy.special import chdtrc, fdtrc
+
+        freedom = max(self.degrees_of_freedom, 1)
+        known = self.uncertainties == "absolute"
+        chance = chdtrc(extra, max(rise, 0.0) / unit) if known else fdtrc(extra, freedom, max(rise, 0.0) / unit / extra)
+        return bool(
+            chance * samples < _NO_VORTEX
+        )  # noise has as many places to look like a vortex as there are samples
 
     @property
     def converged(self) -> bool:
@@ -341,8 +348,8 @@ class Fit:
         """
         low, high = self._limits_of("core_pressure_drop", 0.95)
         constant = self.model.centre_pressure(*self._shape)
-        if (self.undetermined and not math.isfinite(high)) or math.isnan(self._swirl_scale):
-            return Estimate(density * low, math.nan, "core_pressure_drop", bound="lower")
+        if not (low > 0.0 and math.isfinite(high)):
+            return Estimate(density * max(low, 0.0), math.nan, "core_pressure_drop", bound="lower")
         value = density * self._swirl_scale**2 * constant
         relative = self._log_uncertainty("core_pressure_drop")
         return Estimate(
