@@ -144,7 +144,7 @@ def _log_slope(measure: Callable[..., float], shape: list[float], which: int) ->
     return float((math.log(measure(*up)) - math.log(measure(*down))) / (2.0 * h))
 
 
-    """Chi-square without any vortex: of the background alone or a uniform flow; and how many columns that adds.
+def null_chi_square(problem: Problem, *, uniform: bool) -> tuple[float, int]:
     """Chi-square without any vortex, of background or uniform flow alone; and how many columns the latter adds.
 
     A vortex far away looks like a uniform flow, so that is what a vortex of unknown centre has to beat.
