@@ -495,7 +495,7 @@ def test_many_dropped_rows_with_one_reason_take_one_line(appraisal):
     provenance = dataclasses.replace(appraisal.survey.provenance, dropped=rows)
     aside = dict.fromkeys(range(3, 60), "outlier")
     survey = dataclasses.replace(appraisal.survey, provenance=provenance, set_aside=aside)
-    text = record_page.content(dataclasses.replace(appraisal, survey=survey, _ranking=None))
+    text = record_page.content(dataclasses.replace(appraisal, survey=survey))
     assert len(text["dropped"]) == 1
     assert text["dropped"][0][0] == 390
     assert len(text["set_aside"]) == 1

@@ -42,7 +42,7 @@ def figures(appraisal: Any) -> dict[str, FigureData | None]:
 
     # A core that the survey leaves open stands at its limit, whose profile nobody measured.
     supported = zip((row for row in models if not row.rejected), appraisal.core.supported, strict=False)
-    profiles = [vortex for row, vortex in supported if row.parameters["core_radius"].bound is None][:MOST_VORTICES]
+    profiles = [vortex for row, vortex in supported if row.drop.bound is None][:MOST_VORTICES]
 
     def draw_survey(figure: Figure, theme: Theme) -> None:
         plot = PlanePlot(figure, theme=theme.name) if plane else SurveyPlot(figure, theme=theme.name)
