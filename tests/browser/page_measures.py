@@ -58,11 +58,20 @@ OVERFLOW = """() => {
         .filter(e => seen(e) && !e.closest('.MathJax, mjx-container, .jupyter-matplotlib-toolbar'))
         .filter(e => e.getBoundingClientRect().width > 1 && e.getBoundingClientRect().right > right + 0.5)
         .map(e => `${e.tagName}.${e.className} ends ${Math.round(e.getBoundingClientRect().right - right)} px outside`);
-    if (panel.scrollWidth > panel.clientWidth + 1) wide.push('the panel scrolls sideways');
+    for (const box of [panel, ...panel.querySelectorAll('*')]) {
+        if (['TEXTAREA', 'INPUT'].includes(box.tagName) || box.closest('.jupyter-matplotlib, mjx-container')) continue;
+        if (seen(box) && getComputedStyle(box).overflowX !== 'visible' && box.scrollWidth > box.clientWidth + 1)
+            wide.push(`${box.tagName}.${box.className} hides ${box.scrollWidth - box.clientWidth} px`);
+    }
     const output = panel.closest('.jp-OutputArea-output, .jp-OutputArea-child');
     if (output && output.scrollWidth > output.clientWidth + 1) wide.push('the output scrolls sideways');
     return wide;
 }"""
+
+# A field whose number is longer than it is cut as well.
+CUT_FIELDS = """() => [...document.querySelectorAll('.vx-panel input[type=text], .vx-panel select')]
+    .filter(e => e.getClientRects().length && e.scrollWidth > e.clientWidth + 1)
+    .map(e => `${e.value}: ${e.scrollWidth} px in ${e.clientWidth}`)"""
 
 CUT_LABELS = """() => [...document.querySelectorAll('.vx-panel label, .vx-panel .widget-label, .vx-panel button')]
     .filter(e => e.getClientRects().length && getComputedStyle(e).visibility !== 'hidden')

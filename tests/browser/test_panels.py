@@ -6,7 +6,7 @@ success criterion 1.4.3, asks of text.
 
 import pytest
 from browser.lab_driver import ask_kernel, settle, use_theme
-from browser.page_measures import CONTRAST, CUT_LABELS, OVERFLOW, measure_latency, slider, tell_latency
+from browser.page_measures import CONTRAST, CUT_FIELDS, CUT_LABELS, OVERFLOW, measure_latency, slider, tell_latency
 
 pytestmark = pytest.mark.browser
 
@@ -75,7 +75,7 @@ def type_into(page, label, text):
 def picture(page, artefacts, name):
     """Keep a picture of the whole panel, in a window that is high enough for it."""
     size = page.viewport_size
-    page.set_viewport_size({"width": size["width"], "height": 3300})
+    page.set_viewport_size({"width": size["width"], "height": 4200})
     page.wait_for_timeout(200)
     page.locator(".vx-panel").first.screenshot(path=artefacts / f"{name}.png")
     page.set_viewport_size(size)
@@ -201,7 +201,7 @@ def test_nothing_is_cut_off_or_sticks_out(any_page, width, artefacts):
     any_page.set_viewport_size({"width": width, "height": 1700})
     any_page.wait_for_timeout(300)
     picture(any_page, artefacts, f"{any_page.panel_name}-{width}")
-    outside, cut = any_page.evaluate(OVERFLOW), any_page.evaluate(CUT_LABELS)
+    outside, cut = any_page.evaluate(OVERFLOW), any_page.evaluate(CUT_LABELS) + any_page.evaluate(CUT_FIELDS)
     any_page.set_viewport_size({"width": 1300, "height": 1700})
     assert outside == []
     assert cut == []

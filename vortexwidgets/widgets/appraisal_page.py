@@ -90,7 +90,8 @@ def core_page(appraisal: Appraisal) -> str:
         ["share from beyond the survey", f"{100 * appraisal.share_beyond:.1f} %"],
     ]
     budget = appraisal.core_pressure_drop.budget
-    return html_table([], rows) + budget_page(budget) + sentences([*appraisal.assumptions, *appraisal.cautions])
+    assumed = f'<p class="vx-quiet">Assumed:</p>{sentences(appraisal.assumptions, "vx-quiet")}'
+    return html_table([], rows) + budget_page(budget) + sentences(appraisal.cautions, "vx-caution") + assumed
 
 
 def budget_page(budget: Sequence[Contribution]) -> str:
@@ -108,8 +109,8 @@ def consequences_page(appraisal: Appraisal) -> str:
         verdict = html.escape(f"{item.criterion.text}: {item.verdict}{chance}")
         mark = item.verdict.replace(" ", "-")
         blocks.append(
-            f'<div class="vx-consequence vx-{html.escape(mark)}"><b>{html.escape(item.name)}</b> '
-            f"{html.escape(format_estimate(item.estimate))}<br><span>{verdict}</span>"
+            f'<div class="vx-consequence vx-{html.escape(mark)}"><b>{html.escape(item.name)}</b>: '
+            f"{html.escape(item.question)}<br><b>{html.escape(format_estimate(item.estimate))}</b>. {verdict}"
             f"{sentences(item.notes)}"
             f'<p class="vx-quiet">{html.escape(item.caution)}</p></div>'
         )

@@ -80,9 +80,11 @@ class Scale:
         label = f"{parameter.name.replace('_', ' ')} {parameter.symbol}"
         return cls(label, parameter.description, "", 1.0, parameter.typical, read)
 
-    def write(self, value: float) -> str:
-        """Return an SI number as text that `read` understands, in twelve digits at most."""
-        return f"{float(f'{value / self.factor:.12g}')!r} {self.unit}".strip().replace(".0 ", " ").removesuffix(".0")
+    def write(self, value: float, digits: int = 6) -> str:
+        """Return an SI number as text that `read` understands, with no more digits than it needs."""
+        return (
+            f"{float(f'{value / self.factor:.{digits}g}')!r} {self.unit}".strip().replace(".0 ", " ").removesuffix(".0")
+        )
 
     @property
     def is_logarithmic(self) -> bool:
@@ -140,8 +142,8 @@ class NumberControl(ipywidgets.VBox):
         self.value = value
         self._show(value)
 
-    def _show(self, value: float) -> None:
-        self._shown = self.scale.write(value)
+    def _show(self, value: float, digits: int = 6) -> None:
+        self._shown = self.scale.write(value, digits)
         self.field.value = self._shown
         self.refusal.say("")
         coordinate = _coordinate(self.scale, value / self.scale.factor)
@@ -170,7 +172,7 @@ class NumberControl(ipywidgets.VBox):
             self.refusal.say(str(refused))
             return
         self.value = number
-        self._show(number)
+        self._show(number, digits=12)  # what was typed stays as it was typed
 
     _shown = ""
     _step: int | None = None

@@ -140,25 +140,31 @@ class PointsControls(ipywidgets.VBox):
 
     def toggle(self, index: int) -> None:
         """Set a sample aside, or put it back if it was."""
-        survey = self._state.survey
-        outside = index in survey.set_aside
-        self._state.survey = (
-            survey.with_samples([index]) if outside else survey.without([index], reason=self.reason.value)
-        )
+        survey = self._survey()
+        if index in survey.set_aside:
+            self._state.survey = survey.with_samples([index])
+        else:
+            self._state.survey = survey.without([index], reason=self.reason.value)
 
     def set_aside(self) -> None:
         """Set aside the samples whose numbers are typed."""
-        self._state.survey = self._state.survey.without(sample_numbers(self.numbers.value), reason=self.reason.value)
+        self._state.survey = self._survey().without(sample_numbers(self.numbers.value), reason=self.reason.value)
 
     def put_back(self) -> None:
         """Put back the samples whose numbers are typed."""
-        self._state.survey = self._state.survey.with_samples(sample_numbers(self.numbers.value))
+        self._state.survey = self._survey().with_samples(sample_numbers(self.numbers.value))
 
     def put_all_back(self) -> None:
         """Put every sample back."""
-        self._state.survey = self._state.survey.with_all()
+        self._state.survey = self._survey().with_all()
 
-    def _show(self, survey: Survey) -> None:
+    def _survey(self) -> Survey:
+        survey: Survey | None = self._state.survey
+        if survey is None:
+            raise ValueError("There is no survey yet; read one first.")
+        return survey
+
+    def _show(self, survey: Survey | None) -> None:
         self.list.value = set_aside_table(survey)
 
 
@@ -209,9 +215,9 @@ def sample_numbers(typed: str) -> list[int]:
     return found
 
 
-def set_aside_table(survey: Survey) -> str:
+def set_aside_table(survey: Survey | None) -> str:
     """Return the samples that are set aside as an HTML table."""
-    if not survey.set_aside:
+    if survey is None or not survey.set_aside:
         return '<p class="vx-quiet">Every sample is in use.</p>'
     rows = "".join(
         f"<tr><td>{index}</td><td>{survey.velocity[index]:.4g} m/s</td><td>{html.escape(reason)}</td></tr>"
