@@ -26,8 +26,10 @@ def test_fractions_of_a_wandering_lamb_oseen_vortex(wander, tap, naive):
 
 
 def test_the_tap_reads_the_mean_of_the_fluctuating_balance():
-    """At σ = 0.3 the three terms of the fluctuating radial balance, 0.5874 + 0.0654 - 0.0362 = 0.6166, equal the Gaussian mean
-    of the instantaneous pressure (derived, recomputed independently)."""
+    """At σ = 0.3 the terms of the fluctuating radial balance, 0.5874 + 0.0654 - 0.0362 = 0.6166, are the Gaussian mean.
+
+    Derived, recomputed independently.
+    """
     drops = vx.core_drops(UNIT, density=1.0, wander=0.3)
     assert drops["mean pressure at a fixed point"] == pytest.approx(0.6166, abs=5e-5)
     assert drops["mean profile"] == pytest.approx(0.5874, abs=5e-5)

@@ -5,9 +5,9 @@ import dataclasses
 import numpy as np
 import pytest
 from scipy.optimize import curve_fit, minimize
-from vortexwidgets.models.catalogue import MODELS
 
 import vortexwidgets as vx
+from vortexwidgets.models.catalogue import MODELS
 
 FITTED = [key for key, model in MODELS.items() if model.ranked]
 
@@ -226,6 +226,21 @@ def test_a_survey_outside_the_core_gives_limits_and_no_number():
     assert drop.bound == "lower"
     assert 0.0 < drop.value < vortex.pressure_drop(0.0, density=1000.0)
     assert "does not enter the core" in fit.status
+
+
+@pytest.mark.parametrize("key", ["kaufmann", "lamb-oseen", "rankine", "vatistas"])
+def test_every_model_names_a_limit_for_a_core_that_was_not_entered(key):
+    """The upper limit lies above the truth and is a length; the core radius is a bound, never a number."""
+    vortex = vx.Vortex("kaufmann", circulation=3.3, core_radius=0.009)
+    radius = np.linspace(0.06, 0.3, 60)
+    swirl = vortex.swirl(radius) + 0.7 * np.random.default_rng(1).normal(size=60)
+    fit = vx.fit_survey(vx.Survey.radial(radius=radius, swirl=swirl, uncertainty=0.7), key)
+    assert "core_radius" in fit.undetermined
+    low, high = fit.interval("core_radius")
+    assert low == 0.0
+    assert 0.009 < high < 0.3
+    assert fit.estimate("core_radius").bound == "upper"
+    assert fit.core_pressure_drop(1000.0).bound == "lower"
 
 
 def test_a_survey_inside_the_core_gives_no_circulation():

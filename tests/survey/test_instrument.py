@@ -54,7 +54,11 @@ def test_weights_sum_to_one_and_an_ideal_instrument_moves_nothing():
 
 @pytest.mark.parametrize(
     ("options", "message"),
-    [({"wander": -1.0}, "wander"), ({"probe_width": math.nan}, "probe_width"), ({"averaging": "round"}, "averaging must be")],
+    [
+        ({"wander": -1.0}, "wander"),
+        ({"probe_width": math.nan}, "probe_width"),
+        ({"averaging": "round"}, "averaging must be"),
+    ],
 )
 def test_refusals(options, message):
     with pytest.raises(ValueError, match=message):

@@ -49,23 +49,26 @@ class Profile:
             A positive quantity beyond these is taken as zero or infinite.
         """
         step = self.step if math.isfinite(self.step) and self.step > 0.0 else abs(self.value)
-        centre = math.log(self.value) if self.positive else self.value
-        reach = step / self.value if self.positive else step
+        centre = math.log(max(self.value, floor)) if self.positive else self.value
+        reach = step / math.exp(centre) if self.positive else step
         reach = min(reach, 1.0) if self.positive else reach
         inner, inner_excess = 0.0, 0.0
         outer, outer_excess = math.inf, math.inf
+        if self.positive:
+            edge = centre - math.log(floor) if side < 0 else math.log(ceiling) - centre
+        else:
+            edge = ceiling - side * centre
         offset = distance * reach
         nuisance = list(self.minimum.nonlinear)
         for _ in range(_TRIES * 3):
+            offset = min(offset, edge)
             value = math.exp(centre + side * offset) if self.positive else centre + side * offset
-            if self.positive and value < floor:
-                return 0.0
-            if value > ceiling or (not self.positive and abs(value) > ceiling):
-                return math.inf * side
             excess, moved = self.excess(value, nuisance)
             if abs(excess - distance) < _TOLERANCE * distance:
                 return value
             if excess < distance:
+                if offset >= edge:
+                    return 0.0 if self.positive and side < 0 else math.inf * side
                 inner, inner_excess, nuisance = offset, excess, moved
             else:
                 outer, outer_excess = offset, excess

@@ -28,7 +28,7 @@ Loss = Literal["linear", "huber", "soft_l1"]
 # A core radius beyond these multiples of the nearest and the farthest sample is no longer seen by the survey.
 _TOO_SMALL, _TOO_LARGE = 1e-3, 1e3
 _PROBITS = np.array(PROBITS)
-_SUSPECT = 0.2  # relative standard uncertainty from which one-sidedness is looked for
+_SUSPECT = 0.1  # relative standard uncertainty from which one-sidedness is looked for
 _NO_VORTEX = 1e-3  # chance at which the drop of chi-square by a vortex would be noise
 
 

@@ -14,8 +14,8 @@ from vortexwidgets.quantities import check
 FloatArray = npt.NDArray[np.float64]
 Averaging = Literal["along", "across", "square"]
 
-# Nodes per direction. Gauss-Hermite for the wander, Gauss-Legendre for the probe: for the smooth profiles 1e-6 of the peak
-# up to a wander of 0.6 core radii and a probe of one core radius (tests/survey/test_instrument.py).
+# Nodes per direction, Gauss-Hermite for the wander and Gauss-Legendre for the probe. For the smooth profiles they are good
+# to 1e-6 of the peak up to a wander of 0.6 core radii and a probe of one (tests/survey/test_instrument.py).
 _WANDER_NODES = 16
 _PROBE_NODES = 8
 
@@ -40,8 +40,8 @@ class Instrument:
 
     Notes
     -----
-    The mean of what was read at a point is the mean of the velocity vector over the displacements of the vortex relative
-    to the probe. Both effects are linear in the velocity, so one rule of nodes and weights serves every model.
+    The mean of what was read at a point is the mean of the velocity over the displacements of the vortex relative to
+    the probe. Both effects are linear in the velocity, so one rule of nodes and weights serves every model.
     """
 
     wander: float = 0.0
