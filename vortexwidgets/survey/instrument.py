@@ -14,8 +14,8 @@ from vortexwidgets.quantities import check
 FloatArray = npt.NDArray[np.float64]
 Averaging = Literal["along", "across", "square"]
 
-# Nodes per direction, Gauss-Hermite for the wander and Gauss-Legendre for the probe. For the smooth profiles they are good
-# to 1e-6 of the peak up to a wander of 0.6 core radii and a probe of one (tests/survey/test_instrument.py).
+# Nodes per direction, Gauss-Hermite for the wander and Gauss-Legendre for the probe. For the smooth profiles they are
+# good to 1e-6 of the peak up to a wander of 0.6 core radii and a probe of one (tests/survey/test_instrument.py).
 _WANDER_NODES = 16
 _PROBE_NODES = 8
 
