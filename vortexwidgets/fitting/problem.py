@@ -38,6 +38,7 @@ class Samples:
     background: FloatArray  # (B, N) columns
     background_names: tuple[str, ...]
     is_flat: bool  # a line that measures across itself, positive to its left
+    places: frozenset[float]  # of the samples of a flat line, where a centre would be at distance 0
     prior: tuple[int, float, float] | None  # nonlinear parameter, value, standard uncertainty
     station: npt.NDArray[np.intp] | None  # (N,) which reading each sample repeats; None where no reading is repeated
 
@@ -164,27 +165,27 @@ class Problem:
 
     def _fill_flat(self, nonlinear: list[float], free: tuple[int, ...], rows: list[FloatArray]) -> None:
         """The same on a line through the axis that measures across itself, where most of the geometry falls away."""
-        toward = self.samples.toward_y
-        dx = np.subtract(self.samples.x, nonlinear[CENTRE_X])
-        x = np.absolute(dx)
-        x += _NEAR_ZERO
-        x /= nonlinear[CORE_RADIUS]
+        samples = self.samples
+        centre_x, core_radius = nonlinear[CENTRE_X], nonlinear[CORE_RADIUS]
+        signed = np.subtract(samples.x, centre_x)
+        if centre_x in samples.places:
+            signed += _NEAR_ZERO
+        np.divide(signed, core_radius, signed)
+        x = np.absolute(signed)
         swirl, vorticity, *by_shape = self.kernel(x, *nonlinear[SHAPE:])
-        across = np.copysign(toward, dx)
+        across = np.copysign(samples.toward_y, signed)
         np.multiply(swirl, across, rows[0])
         if not free:
             return
+        steep = rows[1 + free.index(CORE_RADIUS)] if CORE_RADIUS in free else np.empty_like(x)
         slope = np.multiply(x, vorticity)
-        np.subtract(swirl, slope, slope)
+        np.multiply(np.subtract(swirl, slope, slope), across, steep)
         for index, row in zip(free, rows[1:], strict=True):
-            if index == CORE_RADIUS:
-                np.multiply(slope, across, row)
-            elif index == CENTRE_X:
-                np.divide(slope, x, row)
-                np.multiply(row, toward, row)
+            if index == CENTRE_X:
+                np.divide(steep, signed, row)
             elif index == CENTRE_Y:
                 row.fill(0.0)
-            else:
+            elif index >= SHAPE:
                 np.multiply(by_shape[index - SHAPE], across, row)
                 row *= nonlinear[index]
 
@@ -215,6 +216,7 @@ def _laid_out(survey: Survey, instrument: Instrument | None, background: Backgro
     if survey.miss_distance is not None and survey.miss_distance.uncertainty > 0.0:
         prior = (CENTRE_Y, survey.miss_distance.value, survey.miss_distance.uncertainty)
     target = velocity / uncertainty
+    is_flat = on_line and across and bool((toward_y > 0.0).all())
     return Samples(
         x=x,
         y=None if on_line else y,
@@ -226,7 +228,8 @@ def _laid_out(survey: Survey, instrument: Instrument | None, background: Backgro
         weights=weights,
         background=columns,
         background_names=names,
-        is_flat=on_line and across and bool((toward_y > 0.0).all()),
+        is_flat=is_flat,
+        places=frozenset(x.tolist()) if is_flat else frozenset(),
         prior=prior,
         station=_stations(survey),
     )
