@@ -102,6 +102,14 @@ def test_auto_swaps_to_the_canvas_when_the_front_end_answers():
     live.close()
 
 
+def test_auto_does_without_ipympl(monkeypatch):
+    monkeypatch.setattr("vortexwidgets.widgets.canvas.find_spec", lambda _: None)
+    live = LiveFigure(Line, size=(300, 200), front_end="auto")
+    assert not live.is_interactive
+    live.moved()
+    live.close()
+
+
 def test_canvas_is_shown_when_asked_for():
     live = LiveFigure(Line, size=(300, 200), front_end="canvas")
     assert live.is_interactive

@@ -5,6 +5,7 @@ from __future__ import annotations
 import asyncio
 import io
 from collections.abc import Callable, Sequence
+from importlib.util import find_spec
 from typing import TYPE_CHECKING, Any, Generic, Literal, Protocol, TypeVar
 
 import ipywidgets
@@ -83,13 +84,13 @@ class LiveFigure(ipywidgets.Box, Generic[_Shown]):
         self._size, self._rest = size, rest
         self._background: Any = None
         self.figure = _new_figure(size)
-        self.canvas = _new_canvas(self.figure, interactive=front_end != "image")
+        self.canvas = _new_canvas(self.figure, front_end)
         self.plot = make_plot(self.figure, theme="dark" if theme == "dark" else "light")
         self._connection = self.canvas.mpl_connect("draw_event", self._on_draw)
         self._picture = ipywidgets.Image(format="png", width=size[0], height=size[1])
         self._picture.add_class("vx-picture")
         self.children: tuple[Any, ...] = (self.canvas if front_end == "canvas" else self._picture,)
-        if front_end == "auto":
+        if front_end == "auto" and isinstance(self.canvas, ipywidgets.Widget):
             self.canvas.on_msg(self._on_front_end)
         self.redraw()
 
@@ -198,8 +199,8 @@ def _new_figure(size: tuple[int, int]) -> Figure:
     return Figure(figsize=(size[0] / _DOTS_PER_INCH, size[1] / _DOTS_PER_INCH), dpi=_DOTS_PER_INCH)
 
 
-def _new_canvas(figure: Figure, *, interactive: bool) -> Any:
-    if not interactive:
+def _new_canvas(figure: Figure, front_end: FrontEnd) -> Any:
+    if front_end == "image" or (front_end == "auto" and find_spec("ipympl") is None):
         from matplotlib.backends.backend_agg import FigureCanvasAgg
 
         return FigureCanvasAgg(figure)

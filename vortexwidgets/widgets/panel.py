@@ -19,7 +19,7 @@ if TYPE_CHECKING:
     from vortexwidgets.widgets.state import PanelState
 
 CONTROLS_WIDTH = "320px"
-FIGURE_WIDTH = 580  # px: fits beside the controls in a wide notebook, and below them in one of 800 px
+FIGURE_WIDTH = 550  # px: fits beside the controls in a wide notebook, and below them in one of 800 px
 
 
 @cache
