@@ -60,8 +60,19 @@ def fit_ratio():
         values, covariance = curve_fit(swirl, position, velocity, p0=first, sigma=uncertainty, absolute_sigma=True)
         return values, np.sqrt(np.diag(covariance))
 
-    difference = np.max(np.abs(ours()[0] / theirs()[0] - 1.0))
-    return (*paired(ours, theirs), difference)
+    reference = polished(swirl, position, velocity, uncertainty, first)
+    errors = [float(np.max(np.abs(fit()[0] / reference - 1.0))) for fit in (ours, theirs)]
+    return (*paired(ours, theirs), *errors)
+
+
+def polished(swirl, position, velocity, uncertainty, values):
+    """curve_fit restarted from its own end until its last digit is at rest."""
+    for _ in range(5):
+        values, _ = curve_fit(
+            swirl, position, velocity, p0=values, sigma=uncertainty, absolute_sigma=True,
+            ftol=1e-15, xtol=1e-15, gtol=1e-15,
+        )  # fmt: skip
+    return values
 
 
 def kernel_ratio():
@@ -82,11 +93,12 @@ def process_seconds(code, rounds=9):
 
 
 def main():
-    ratio, ours, theirs, difference = fit_ratio()
+    ratio, ours, theirs, our_error, their_error = fit_ratio()
     print(f"{'':58}{'measured':>12}{'mark':>10}")
     print(f"{'one 60-point traverse with standard errors, times faster':58}{ratio:12.2f}{'2':>10}")
     print(f"{'   fit_survey / curve_fit, µs':58}{1e6 * ours:6.0f} /{1e6 * theirs:4.0f}")
-    print(f"{'   largest relative difference of the values':58}{difference:12.1e}{'1e-8':>10}")
+    print(f"{'   largest relative difference from a polished fit':58}{our_error:12.1e}{'1e-8':>10}")
+    print(f"{'   and that of curve_fit with its defaults':58}{their_error:12.1e}")
     ratio, _, _ = kernel_ratio()
     print(f"{'Lamb-Oseen kernel, 1e5 points, times hand-written NumPy':58}{ratio:12.2f}{'1.0':>10}")
     print(f"{'import vortexwidgets, s':58}{process_seconds('import vortexwidgets'):12.3f}{'0.15':>10}")

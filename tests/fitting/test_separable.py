@@ -210,6 +210,15 @@ def test_solution_by_hand_equals_the_loops(monkeypatch, bend):
     assert short == [separable._solved(system, bend) for system in systems]
 
 
+def test_inverse_by_hand_equals_the_loops(monkeypatch):
+    short = [separable._inverse(matrix, 3) for matrix in matrices(3)]
+    monkeypatch.setattr(separable, "_inverse_by_hand", lambda matrix: None)
+    for by_hand, matrix in zip(short, matrices(3), strict=True):
+        scale = np.sqrt(np.diag(matrix)[:3])
+        loops = np.array(separable._inverse(matrix, 3)) * scale * scale[:, None]
+        assert np.array(by_hand) * scale * scale[:, None] == pytest.approx(loops, rel=1e-12, abs=1e-12)
+
+
 def test_solution_is_numpys():
     for matrix in matrices(4):
         a, b = np.array(matrix)[:4, :4], np.array(matrix)[:4, 4]

@@ -88,10 +88,10 @@ class Solution:
         """Inverse of `normal` as rows; infinite where a parameter does not matter."""
         factors = self._factors
         inverse = _inverse(self._products.tolist(), len(factors))
-        for row, own in zip(inverse, factors, strict=True):
-            for column, other in enumerate(factors):
-                row[column] /= own * other
-        return inverse
+        return [
+            [value / (own * other) for value, other in zip(row, factors, strict=True)]
+            for row, own in zip(inverse, factors, strict=True)
+        ]
 
     @property
     def jacobian(self) -> FloatArray:
@@ -434,6 +434,8 @@ def _bent(bend: list[list[float]] | None, before: _State, state: _State, free: t
 
 def _inverse(matrix: list[list[float]], size: int) -> list[list[float]]:
     """Inverse of the upper left of a positive matrix; infinite on the diagonal of a row that depends on those above."""
+    if size == 3 and (short := _inverse_by_hand(matrix)):
+        return short
     inverse = [row[:size] for row in matrix[:size]]
     left_out = []
     for i in range(size):
@@ -456,6 +458,28 @@ def _inverse(matrix: list[list[float]], size: int) -> list[list[float]]:
             inverse[i][k] = inverse[k][i] = 0.0
         inverse[i][i] = math.inf
     return inverse
+
+
+def _inverse_by_hand(matrix: list[list[float]]) -> list[list[float]] | None:
+    """The same for three; nothing where one depends on the others."""
+    (a, b, c, *_), (_, d, e, *_), (_, _, f, *_) = matrix[:3]
+    if not a > 0.0:
+        return None
+    least_d, least_f = _SINGULAR * d, _SINGULAR * f
+    by_b, by_c = b / a, c / a
+    d -= by_b * b
+    if not d > least_d:
+        return None
+    e -= by_b * c
+    by_e = e / d
+    f -= by_c * c + by_e * e
+    if not f > least_f:
+        return None
+    turn = by_b * by_e - by_c
+    h, g = -by_e / f, turn / f
+    i = 1.0 / d - by_e * h
+    j = -by_b / d - by_e * g
+    return [[1.0 / a + by_b * by_b / d + turn * g, j, g], [j, i, h], [g, h, 1.0 / f]]
 
 
 def _damped(reduced: list[list[float]], damping: float) -> list[float]:
