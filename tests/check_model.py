@@ -86,6 +86,24 @@ def profile_is_continuous_at_its_edges(model):
             require(all(abs(step) < 1e-25 for step in steps), model, f"{quantity} jumps at x = {edge}")
 
 
+def published_peak_is_one_of_the_declared_profile(model):
+    """Before anything is derived: the declared F has the published size there, and is flat or has its edge there."""
+    if model.published_peak is None:
+        return
+    tolerance = 0.5 * 10.0 ** (1 - model.published_digits)
+    for shape in shapes(model):
+        numbers = dict(zip(model.symbols, map(sp.Rational, shape), strict=True))
+        place, size = (mp.mpf(sp.N(sp.sympify(part).subs(numbers), 40)) for part in model.published_peak)
+        swirl = precise(model.swirl, model, shape)
+        with mp.workdps(40):
+            off = abs(swirl(place) - size) / size
+            require(off <= tolerance, model, f"F is {swirl(place)} at the published peak, not {size}, {shape}")
+            if not model.edges:
+                # A place that is off by a share e leaves a slope of about e F''.
+                slope = abs(mp.diff(swirl, place)) * place / size
+                require(slope <= 5 * tolerance, model, f"F still has the slope {slope} at the published peak, {shape}")
+
+
 def vorticity_is_the_curl_of_the_swirl(model):
     for shape in shapes(model):
         swirl, vorticity = precise(model.swirl, model, shape), precise(model.vorticity, model, shape)
@@ -252,6 +270,7 @@ def nothing_is_infinite_that_should_not_be(model):
 
 PARTS = [
     source_is_given,
+    published_peak_is_one_of_the_declared_profile,
     axis_is_regular,
     circulation_far_away_is_that_of_the_strength,
     profile_is_continuous_at_its_edges,
