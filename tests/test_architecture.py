@@ -36,6 +36,7 @@ ORDER = [
     "survey.screening",
     "survey.instrument",
     "fitting.problem",
+    "fitting.elimination",
     "fitting.separable",
     "fitting.limits",
     "fitting.starting",

@@ -7,7 +7,6 @@ import pytest
 from scipy.optimize import least_squares
 
 import vortexwidgets as vx
-from vortexwidgets.fitting import separable
 from vortexwidgets.fitting.problem import Problem, lay_out
 from vortexwidgets.fitting.separable import SHAPE_BOUNDS, misfit, solve
 
@@ -181,58 +180,3 @@ def test_covariance_and_jacobian_belong_to_the_minimum():
     assert solution.normal == pytest.approx(rows @ rows.T, rel=1e-5, abs=1e-5)
     assert np.array(solution.inverse) == pytest.approx(np.linalg.inv(solution.normal), rel=1e-9)
     assert misfit(problem, solution.nonlinear) == pytest.approx(solution.chi_square, rel=1e-9)
-
-
-# The eliminations written out for a traverse, against the loops for any size: the same numbers, bit by bit.
-
-
-def matrices(count):
-    generator = np.random.default_rng(7)
-    for _ in range(200):
-        columns = generator.normal(size=(count + 1, 12)) * 10.0 ** generator.uniform(-6, 6, (count + 1, 1))
-        yield (columns @ columns.T).tolist()
-
-
-def test_elimination_by_hand_equals_the_loops(monkeypatch):
-    short = [separable._reduced(matrix, 1, None) for matrix in matrices(3)]
-    monkeypatch.setattr(separable, "_reduced_by_hand", lambda products: pytest.fail("not the loops"))
-    for matrix, by_hand in zip(matrices(3), short, strict=True):
-        matrix = [[value if k >= i else matrix[k][i] for k, value in enumerate(row)] for i, row in enumerate(matrix)]
-        # A strength given is the loops' way; it is the one found, so nothing else may differ.
-        assert separable._reduced(matrix, 1, by_hand[0]) == by_hand
-
-
-@pytest.mark.parametrize("bend", [None, [[0.3, -0.1], [-0.1, 0.2]]])
-def test_solution_by_hand_equals_the_loops(monkeypatch, bend):
-    systems = [[[*row[:2], row[2]] for row in matrix[:2]] for matrix in matrices(2)]
-    short = [separable._solved(system, bend) for system in systems]
-    monkeypatch.setattr(separable, "_solved_by_hand", lambda reduced, bend: None)
-    assert short == [separable._solved(system, bend) for system in systems]
-
-
-def test_inverse_by_hand_equals_the_loops(monkeypatch):
-    short = [separable._inverse(matrix, 3) for matrix in matrices(3)]
-    monkeypatch.setattr(separable, "_inverse_by_hand", lambda matrix: None)
-    for by_hand, matrix in zip(short, matrices(3), strict=True):
-        scale = np.sqrt(np.diag(matrix)[:3])
-        loops = np.array(separable._inverse(matrix, 3)) * scale * scale[:, None]
-        assert np.array(by_hand) * scale * scale[:, None] == pytest.approx(loops, rel=1e-12, abs=1e-12)
-
-
-def test_solution_is_numpys():
-    for matrix in matrices(4):
-        a, b = np.array(matrix)[:4, :4], np.array(matrix)[:4, 4]
-        step, promise = separable._solved([row[:5] for row in matrix[:4]])
-        scale = np.sqrt(np.diag(a))
-        expected = np.linalg.solve(a / scale / scale[:, None], b / scale) / scale
-        assert step == pytest.approx(expected, rel=1e-6)
-        assert promise == pytest.approx(float(b @ expected), rel=1e-6)
-        inverse = np.array(separable._inverse(matrix, 4)) * scale * scale[:, None]
-        assert inverse == pytest.approx(np.linalg.inv(a / scale / scale[:, None]), rel=1e-6, abs=1e-6)
-
-
-def test_a_row_that_depends_on_others_is_left_out():
-    singular = [[2.0, 4.0, 6.0], [4.0, 8.0, 12.0]]
-    assert separable._solved(singular) == ([3.0, 0.0], 18.0)
-    inverse = separable._inverse(singular, 2)
-    assert inverse == [[0.5, 0.0], [0.0, math.inf]]

@@ -11,6 +11,7 @@ from typing import TypeAlias
 import numpy as np
 import numpy.typing as npt
 
+from vortexwidgets.fitting.elimination import back, bent, inverted, reduced, solved
 from vortexwidgets.fitting.problem import CORE_RADIUS, SHAPE, Problem
 
 FloatArray = npt.NDArray[np.float64]
@@ -30,7 +31,6 @@ _EPSILON = 1e-15  # of the power of the data: rounding of chi-square
 _ROUNDING = 1e-26  # of the power of the data: what is left when a model fits exactly
 _LARGEST = 1.0  # of a relative step
 _CANCELLED = 1e-8  # of the power of the data: below it chi-square as a difference of sums has too few digits
-_SINGULAR = 1e-14  # of a diagonal element: what is left of it is rounding
 
 # A shape parameter beyond these no longer changes a profile that anyone could measure.
 SHAPE_BOUNDS = (0.02, 200.0)
@@ -87,7 +87,7 @@ class Solution:
     def inverse(self) -> list[list[float]]:
         """Inverse of `normal` as rows; infinite where a parameter does not matter."""
         factors = self._factors
-        inverse = _inverse(self._products.tolist(), len(factors))
+        inverse = inverted(self._products.tolist(), len(factors))
         return [
             [value / (own * other) for value, other in zip(row, factors, strict=True)]
             for row, own in zip(inverse, factors, strict=True)
@@ -157,12 +157,12 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     while steps < _STEPS:
         steps += 1
         noise = unit * state.chi_square
-        step, decrement = _solved(state.reduced)
+        step, decrement = solved(state.reduced)
         if len(here) > SHAPE and (stuck := _at_bounds(here, free, step)):
             step, decrement = _without(state.reduced, stuck)
         elif before is not None and last < _NEAR * noise:
             bend = _bent(bend, before, state, free)
-            other, promise = _solved(state.reduced, bend)
+            other, promise = solved(state.reduced, bend)
             if 0.25 * decrement < promise < 4.0 * decrement:
                 step = other
         quadratic = decrement < _QUADRATIC * noise
@@ -175,7 +175,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
                 further = _share(step, _step_between(before.here, here, free))
                 gram = state.gram + further * (state.gram - before.gram)
             here = _moved(here, free, step)
-            linear = _back(state.upper, [state.strength * value for value in step])
+            linear = back(state.upper, [state.strength * value for value in step])
             converged = True
             break
         if damping:
@@ -246,8 +246,7 @@ class _Columns:
         gram = self.matrix.dot(self.transposed)
         if self.prior is not None:
             self._add_prior(self.prior, gram, here, strength)
-        strength, level, upper, reduced, chi_square = _reduced(gram.tolist(), self.eliminated, strength)
-        return _State(here, gram, strength, level, upper, reduced, chi_square)
+        return _State(here, gram, *reduced(gram.tolist(), self.eliminated, strength))
 
     def _tied(self, here: list[float], tie: Tie) -> float:
         """Take the swirl that is not free off the target, and turn the derivatives along the tie."""
@@ -264,7 +263,7 @@ class _Columns:
         """Add the row of a parameter that is known beforehand, as a sample of its own."""
         index, _, uncertainty = prior
         if strength is None:
-            strength = _reduced(gram.tolist(), self.eliminated, None)[0]
+            strength = reduced(gram.tolist(), self.eliminated, None)[0]
         off, row = _pull(prior, here), self.eliminated + self.free.index(index)
         # In units of the matrix a relative step is strength times the step.
         weight = here[CORE_RADIUS] / uncertainty / strength if strength else 0.0
@@ -280,221 +279,27 @@ def _pull(prior: tuple[int, float, float], here: list[float]) -> float:
     return (value - here[index]) / uncertainty
 
 
-Reduced: TypeAlias = tuple[float, list[float], list[list[float]], list[list[float]], float]
-
-
-def _reduced(products: list[list[float]], eliminated: int, strength: float | None) -> Reduced:
-    """Eliminate the first unknowns of the normal equations, whose right side is the last row and column.
-
-    Returns
-    -------
-    strength : float
-        As given, else the first unknown.
-    level : list of float
-        The first unknowns, the others being zero.
-    upper : list of list of float
-        Rows that give the first unknowns once the others are known.
-    reduced : list of list of float
-        Normal equations of the others as relative steps, right side last in each row.
-    chi_square : float
-        What is left of the lower right element.
-    """
-    if strength is None and eliminated == 1 and len(products) == 4 and products[0][0] > 0.0:
-        return _reduced_by_hand(products)
-    rows = _eliminate(products, eliminated)
-    upper, reduced = rows[:eliminated], [row[eliminated:] for row in rows[eliminated:-1]]
-    level = _back(upper, [0.0] * len(reduced))
-    if strength is None:
-        strength = level[0]
-    square = strength * strength
-    for i, row in enumerate(reduced):
-        row[-1] *= strength
-        for k in range(len(reduced)):
-            row[k] = reduced[k][i] if k < i else square * row[k]
-    return strength, level, upper, reduced, rows[-1][-1]
-
-
-def _reduced_by_hand(products: list[list[float]]) -> Reduced:
-    """The same for one unknown and two others, which is a traverse; ten times faster than the loops."""
-    first, (_, d, e, u), (_, _, f, v), (_, _, _, chi_square) = products
-    a, b, c, t = first
-    by_b, by_c, strength = b / a, c / a, t / a
-    square = strength * strength
-    e = square * (e - by_b * c)
-    reduced = [
-        [square * (d - by_b * b), e, strength * (u - by_b * t)],
-        [e, square * (f - by_c * c), strength * (v - by_c * t)],
-    ]
-    return strength, [strength], [first], reduced, chi_square - strength * t
-
-
-def _solved(reduced: list[list[float]], bend: list[list[float]] | None = None) -> tuple[list[float], float]:
-    """Step to the minimum of a quadratic, and the decrease of chi-square that it promises."""
-    if len(reduced) == 2 and (pair := _solved_by_hand(reduced, bend)):
-        return pair
-    if bend:
-        reduced = [
-            [*[a + b for a, b in zip(row, more, strict=False)], row[-1]]
-            for row, more in zip(reduced, bend, strict=True)
-        ]
-    rows = _eliminate(reduced, len(reduced))
-    return _back(rows, []), sum([row[-1] / row[i] * row[-1] for i, row in enumerate(rows)])
-
-
-def _solved_by_hand(reduced: list[list[float]], bend: list[list[float]] | None) -> tuple[list[float], float] | None:
-    """The same for two unknowns; nothing where one depends on the other."""
-    (d, e, u), (_, f, v) = reduced
-    if bend:
-        (more_d, more_e), (_, more_f) = bend
-        d, e, f = d + more_d, e + more_e, f + more_f
-    if not d > 0.0:
-        return None
-    least = _SINGULAR * f
-    by_e = e / d
-    f -= by_e * e
-    v -= by_e * u
-    if not f > least:
-        return None
-    second = v / f
-    return [(u - e * second) / d, second], u / d * u + second * v
-
-
-def _eliminate(matrix: list[list[float]], count: int) -> list[list[float]]:
-    """Gaussian elimination of the first `count` unknowns, without pivoting, as fits a positive matrix.
-
-    Only the upper triangle is right afterwards. A row that depends on those above is left out, its unknown 0.
-    """
-    rows: list[list[float]] = []
-    for i, source in enumerate(matrix):
-        row = source[:]
-        for j in range(min(i, count)):
-            above = rows[j]
-            factor = above[i] / above[j]
-            for k in range(i, len(row)):
-                row[k] -= factor * above[k]
-        if i < count and not row[i] > _SINGULAR * source[i]:
-            row[i] = math.inf
-        rows.append(row)
-    return rows
-
-
-def _back(rows: list[list[float]], known: list[float]) -> list[float]:
-    """Unknowns of an upper triangle, those after them being known; the right side is last in each row."""
-    count = len(rows)
-    solution = [0.0] * count + known
-    for i in range(count - 1, -1, -1):
-        row = rows[i]
-        value = row[-1]
-        for k in range(i + 1, len(solution)):
-            value -= row[k] * solution[k]
-        solution[i] = value / row[i]
-    return solution[:count]
-
-
 def _bent(bend: list[list[float]] | None, before: _State, state: _State, free: tuple[int, ...]) -> list[list[float]]:
-    """What the last step showed of the curvature that the products of first derivatives leave out.
-
-    The fall of chi-square changed by more than those products, averaged over the step, account for. The least symmetric
-    matrix that makes up for it is added, least in the metric of the products: the update of [1]_ with a trapezoid.
-
-    References
-    ----------
-    .. [1] J. E. Dennis, D. M. Gay and R. E. Welsch, ACM Trans. Math. Softw. 7 (1981) 348-368.
-    """
-    step = _step_between(before.here, state.here, free)
+    """The bend, with what the last step showed of it."""
     # Lengths of the centre were counted in another core radius before.
     ratio = state.here[CORE_RADIUS] / before.here[CORE_RADIUS]
     units = [ratio if index < CORE_RADIUS else 1.0 for index in free]
-    missing, pull = [], []
-    size = along = 0.0
-    for i, change in enumerate(step):
-        old, new, unit = before.reduced[i], state.reduced[i], units[i]
-        mean = 0.0
-        for k, other in enumerate(step):
-            mean += (unit * units[k] * old[k] + new[k]) * other
-        mean *= 0.5
-        miss = unit * old[-1] - new[-1] - mean
-        if bend:
-            for known, other in zip(bend[i], step, strict=True):
-                miss -= known * other
-        size += mean * change
-        along += miss * change
-        missing.append(miss)
-        pull.append(mean)
-    bend = bend or [[0.0] * len(free) for _ in free]
-    if not size > 0.0:
-        return bend
-    half = 0.5 * along / size
-    for i, row in enumerate(bend):
-        mine, own = (missing[i] - half * pull[i]) / size, pull[i] / size
-        for k in range(len(row)):
-            row[k] += mine * pull[k] + own * (missing[k] - half * pull[k])
-    return bend
+    return bent(bend, before.reduced, state.reduced, units, _step_between(before.here, state.here, free))
 
 
-def _inverse(matrix: list[list[float]], size: int) -> list[list[float]]:
-    """Inverse of the upper left of a positive matrix; infinite on the diagonal of a row that depends on those above."""
-    if size == 3 and (short := _inverse_by_hand(matrix)):
-        return short
-    inverse = [row[:size] for row in matrix[:size]]
-    left_out = []
-    for i in range(size):
-        row = inverse[i]
-        pivot = row[i]
-        if not pivot > _SINGULAR * matrix[i][i]:
-            left_out.append(i)
-            continue
-        row[i] = 1.0
-        for k in range(size):
-            row[k] /= pivot
-        for other in inverse:
-            if other is not row:
-                factor = other[i]
-                other[i] = 0.0
-                for k in range(size):
-                    other[k] -= factor * row[k]
-    for i in left_out:
-        for k in range(size):
-            inverse[i][k] = inverse[k][i] = 0.0
-        inverse[i][i] = math.inf
-    return inverse
-
-
-def _inverse_by_hand(matrix: list[list[float]]) -> list[list[float]] | None:
-    """The same for three; nothing where one depends on the others."""
-    (a, b, c, *_), (_, d, e, *_), (_, _, f, *_) = matrix[:3]
-    if not a > 0.0:
-        return None
-    least_d, least_f = _SINGULAR * d, _SINGULAR * f
-    by_b, by_c = b / a, c / a
-    d -= by_b * b
-    if not d > least_d:
-        return None
-    e -= by_b * c
-    by_e = e / d
-    f -= by_c * c + by_e * e
-    if not f > least_f:
-        return None
-    turn = by_b * by_e - by_c
-    h, g = -by_e / f, turn / f
-    i = 1.0 / d - by_e * h
-    j = -by_b / d - by_e * g
-    return [[1.0 / a + by_b * by_b / d + turn * g, j, g], [j, i, h], [g, h, 1.0 / f]]
-
-
-def _damped(reduced: list[list[float]], damping: float) -> list[float]:
+def _damped(equations: list[list[float]], damping: float) -> list[float]:
     """The step with the diagonal raised (Levenberg-Marquardt)."""
-    raised = [row[:] for row in reduced]
+    raised = [row[:] for row in equations]
     for i, row in enumerate(raised):
         row[i] *= 1.0 + damping
-    return _solved(raised)[0]
+    return solved(raised)[0]
 
 
-def _without(reduced: list[list[float]], stuck: list[int]) -> tuple[list[float], float]:
+def _without(equations: list[list[float]], stuck: list[int]) -> tuple[list[float], float]:
     """Step and promised decrease with some parameters held."""
-    keep = [position for position in range(len(reduced)) if position not in stuck]
-    short, decrement = _solved([[reduced[row][column] for column in [*keep, -1]] for row in keep])
-    step = [0.0] * len(reduced)
+    keep = [position for position in range(len(equations)) if position not in stuck]
+    short, decrement = solved([[equations[row][column] for column in [*keep, -1]] for row in keep])
+    step = [0.0] * len(equations)
     for position, value in zip(keep, short, strict=True):
         step[position] = value
     return step, decrement
