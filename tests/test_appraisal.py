@@ -67,6 +67,13 @@ def test_the_budget_names_its_parts_and_adds_up(appraisal):
     assert parts["velocity gain"] == pytest.approx(0.01 * appraisal.core_pressure_drop.value, rel=1e-9)
 
 
+def test_parts_are_found_by_name(appraisal):
+    assert appraisal.consequence("Cavitation").verdict in ("met", "not met", "not decided")
+    assert appraisal.core_drop("mean profile").name == "mean profile"
+    with pytest.raises(KeyError, match="There are: Cavitation"):
+        appraisal.consequence("Fire")
+
+
 def test_wander_makes_three_drops_of_one():
     """The mean profile of a wandering Lamb-Oseen vortex is one with core_radius² + 2σ² (Devenport et al. 1996).
 

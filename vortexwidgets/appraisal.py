@@ -16,7 +16,7 @@ from vortexwidgets import record
 from vortexwidgets.cautions import assumptions_of, may_have_missed, reference_sentence, survey_cautions
 from vortexwidgets.circumstances import fluid_of, instrument_of, site_of
 from vortexwidgets.consequences import assess_all
-from vortexwidgets.consequences.consequence import Consequence, Criterion
+from vortexwidgets.consequences.consequence import Consequence, Criterion, chance_text
 from vortexwidgets.core_pressure import (
     Core,
     CoreDrop,
@@ -70,7 +70,7 @@ class ModelRow:
     pressure_constant: float
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Appraisal:
     """Everything that was concluded from one survey; frozen, equal by content, kept by `save`.
 
@@ -156,6 +156,14 @@ class Appraisal:
         parts.append(self.reference)
         return "; ".join(parts) + "."
 
+    def consequence(self, name: str) -> Consequence:
+        """A consequence by its name, such as "Cavitation"."""
+        return _named(self.consequences, name, "consequence")
+
+    def core_drop(self, name: str) -> CoreDrop:
+        """One of the three core drops by its name, such as "mean profile"."""
+        return _named(self.core_drops, name, "core drop")
+
     def summary(self) -> str:
         """The appraisal as text for a terminal."""
         lines = [self.answer, ""]
@@ -177,7 +185,7 @@ class Appraisal:
         lines += [f"  {drop.name}: {drop.estimate}" for drop in self.core_drops]
         lines += ["", "Consequences:"]
         for item in self.consequences:
-            chance = "" if item.probability is None else f" (probability {item.probability:.2g})"
+            chance = "" if item.probability is None else f" (probability {chance_text(item.probability)})"
             lines.append(f"  {item.name}: {item.estimate}; {item.criterion.text} {item.verdict}{chance}.")
             lines.append(f"    {item.caution}")
         for title, sentences in (("Assumed", self.assumptions), ("Cautions", self.cautions)):
@@ -196,6 +204,9 @@ class Appraisal:
 
     def __str__(self) -> str:
         return self.summary()
+
+    def __repr__(self) -> str:
+        return f"<Appraisal: {self.answer}>"
 
     def __eq__(self, other: object) -> bool:
         return isinstance(other, Appraisal) and record.encode(self) == record.encode(other)
@@ -222,6 +233,13 @@ class Appraisal:
         else:
             raise ValueError(f"A record ends in .html or .json, got {target.name!r}.")
         return target
+
+
+def _named(items: Sequence[Any], name: str, kind: str) -> Any:
+    for item in items:
+        if item.name == name:
+            return item
+    raise KeyError(f"No {kind} named {name!r} here. There are: {', '.join(item.name for item in items) or 'none'}.")
 
 
 def load_appraisal(path: str | Path) -> Appraisal:

@@ -67,7 +67,7 @@ def data_drop(survey: Survey, fit: Fit, *, density: Estimate, model_drop: Estima
     outer = ring_r >= 0.7 * ring_r[-1]
     weight = 1.0 / np.maximum(ring_u[outer], 1e-300) ** 2
     edge = float(np.sum(weight * ring_v[outer] * ring_r[outer]) / np.sum(weight))
-    beyond = 0.5 * (edge / ring_r[-1]) ** 2
+    beyond = 0.5 * (edge / float(ring_r[-1])) ** 2
     slopes = 2.0 * ring_v * trapezoid
     slopes[0] += ring_v[0]
     noise_part = math.sqrt(float(np.sum((slopes * ring_u) ** 2)) + 2.0 * float(np.sum((trapezoid * ring_u**2) ** 2)))

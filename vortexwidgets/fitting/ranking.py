@@ -65,7 +65,7 @@ class Ranked:
     reason: str
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Ranking:
     """Distinct profiles, best first."""
 
@@ -87,6 +87,9 @@ class Ranking:
                 return row
         raise KeyError(f"No model {which!r} in the ranking. Ranked: {', '.join(row.model.key for row in self.rows)}.")
 
+    def __repr__(self) -> str:
+        return f"<Ranking: {', '.join(row.model.key for row in self.rows)}>"
+
     @property
     def best(self) -> Ranked:
         """The profile with the lowest criterion."""
@@ -103,7 +106,7 @@ class Ranking:
                 " = ".join(row.names),
                 f"{row.aicc:.1f}",
                 f"{100 * row.weight:.1f} %",
-                f"{row.p_value:.2g}",
+                f"{row.p_value:.2g}" if row.p_value >= 1e-4 else "< 1e-4",
                 "rejected" if row.rejected else "not rejected",
             ]
             for row in self.rows
@@ -263,7 +266,9 @@ def _absolute_tests(fits: Sequence[Fit]) -> list[tuple[float, str]]:
     tests = []
     for fit in fits:
         p = float(chdtrc(max(fit.degrees_of_freedom, 1), fit.chi_square))
-        tests.append((p, f"chi² is {fit.chi_square:.1f} on {fit.degrees_of_freedom} degrees of freedom (p = {p:.2g})."))
+        tests.append(
+            (p, f"chi² is {fit.chi_square:.1f} on {fit.degrees_of_freedom} degrees of freedom (p {_chance(p)}).")
+        )
     return tests
 
 
@@ -279,7 +284,7 @@ def _relative_tests(fits: Sequence[Fit]) -> list[tuple[float, str]]:
             extra = max(fit.degrees_of_freedom - freedom, 1)
             ratio = max(fit.chi_square - pure, 0.0) / extra / (pure / freedom)
             p = float(fdtrc(extra, freedom, ratio))
-            rows.append((p, f"lack of fit is {ratio:.2f} times the scatter of the repeats (p = {p:.2g})."))
+            rows.append((p, f"lack of fit is {ratio:.2f} times the scatter of the repeats (p {_chance(p)})."))
         if rows[list(fits).index(best)][0] >= REJECTION:
             return rows
     shared = (
@@ -299,9 +304,13 @@ def _relative_tests(fits: Sequence[Fit]) -> list[tuple[float, str]]:
         if fit is best:
             p, reason = 1.0, "smallest residuals; their scatter is taken as the noise, so it cannot be rejected."
         else:
-            reason = f"the sum of squares is {ratio:.1f} noise variances above the smallest (p = {p:.2g})."
+            reason = f"the sum of squares is {ratio:.1f} noise variances above the smallest (p {_chance(p)})."
         tests.append((p, reason + shared))
     return tests
+
+
+def _chance(p: float) -> str:
+    return f"= {p:.2g}" if p >= 1e-4 else "< 1e-4"
 
 
 def _repeats(fit: Fit) -> tuple[float, int]:

@@ -48,7 +48,7 @@ class Status(StrEnum):
     NO_VORTEX = "No vortex is seen: the samples are explained as well without one."
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Fit:
     """One survey, one model: what was found and how well it is known.
 
@@ -413,6 +413,9 @@ class Fit:
         """Distance of the included in-plane samples from the centre, shape (N,). [m]"""
         x, y = self._problem.samples.position
         return np.asarray(np.hypot(x - self.centre[0], y - self.centre[1]))
+
+    def __repr__(self) -> str:
+        return f"<Fit of {self.model.name}: {self.status}>"
 
     def __str__(self) -> str:
         lines = [f"{self.model.name}: {self.status}"]

@@ -24,7 +24,7 @@ _REACH = 3.0  # peak radii; a Lamb-Oseen vortex has 6 % of its drop beyond
 _UNRESOLVED = 8.0  # times the largest neighbour: what one station inside an unresolved core may show
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, repr=False)
 class Screening:
     """What a survey can carry; `survey` has the outliers set aside with the reason.
 
@@ -50,6 +50,12 @@ class Screening:
     outliers: tuple[int, ...]
     survey: Survey
     sentences: tuple[str, ...]
+
+    def __str__(self) -> str:
+        return " ".join(self.sentences)
+
+    def __repr__(self) -> str:
+        return f"<Screening: {self}>"
 
 
 def screen(survey: Survey, centre: tuple[float, float] | None = None, peak_radius: float | None = None) -> Screening:
