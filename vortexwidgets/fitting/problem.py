@@ -180,14 +180,13 @@ class Problem:
         steep = rows[1 + free.index(CORE_RADIUS)] if CORE_RADIUS in free else np.empty_like(x)
         slope = np.multiply(x, vorticity)
         np.multiply(np.subtract(swirl, slope, slope), across, steep)
-        for index, row in zip(free, rows[1:], strict=True):
+        for position, index in enumerate(free, 1):
             if index == CENTRE_X:
-                np.divide(steep, signed, row)
+                np.divide(steep, signed, rows[position])
             elif index == CENTRE_Y:
-                row.fill(0.0)
+                rows[position].fill(0.0)
             elif index >= SHAPE:
-                np.multiply(by_shape[index - SHAPE], across, row)
-                row *= nonlinear[index]
+                np.multiply(by_shape[index - SHAPE], nonlinear[index] * across, rows[position])
 
 
 def lay_out(survey: Survey, *, instrument: Instrument | None = None, background: Background = "none") -> Samples:

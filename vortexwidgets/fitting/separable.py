@@ -325,17 +325,16 @@ def _moved(here: list[float], free: tuple[int, ...], step: list[float]) -> list[
     """Lengths of the centre move by core radii; positive parameters move by a factor."""
     there = here[:]
     for index, change in zip(free, step, strict=True):
+        limit = 3.0 * _LARGEST if index < CORE_RADIUS else _LARGEST
+        if not abs(change) < limit:
+            change = math.copysign(limit, change)
         if index < CORE_RADIUS:
-            there[index] += here[CORE_RADIUS] * _limited(change, 3.0 * _LARGEST)
+            there[index] += here[CORE_RADIUS] * change
         else:
-            there[index] *= math.exp(_limited(change, _LARGEST))
+            there[index] *= math.exp(change)
             if index >= SHAPE:
                 there[index] = min(max(there[index], SHAPE_BOUNDS[0]), SHAPE_BOUNDS[1])
     return there
-
-
-def _limited(change: float, limit: float) -> float:
-    return change if abs(change) < limit else math.copysign(limit, change)
 
 
 def _at_bounds(here: list[float], free: tuple[int, ...], step: list[float]) -> list[int]:
