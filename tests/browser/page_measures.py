@@ -2,8 +2,6 @@
 
 import statistics
 
-from browser.lab_driver import settle
-
 # Pixels of the first picture below `selector`, whether ipympl's canvas or an image.
 PIXELS = """
 window.vxPixels = selector => {
@@ -45,6 +43,19 @@ STEP = """selector => new Promise((done, fail) => {
         else requestAnimationFrame(look);
     })();
     window.vxArmed = true;
+})"""
+
+# The full drawing at rest must not pass for the answer to the next key.
+STANDS_STILL = """selector => new Promise((done, fail) => {
+    const start = performance.now();
+    let [shown, since] = [vxPixels(selector), start];
+    (function look() {
+        const [now, after] = [performance.now(), vxPixels(selector)];
+        if (shown === null || after === null || vxChanged(shown, after) > 0) [shown, since] = [after, now];
+        if (now - since > 600) done();
+        else if (now - start > 20000) fail(new Error('the plot does not come to rest'));
+        else setTimeout(look, 50);
+    })();
 })"""
 
 OVERFLOW = """() => {
@@ -134,11 +145,11 @@ def measure_latency(page, handle, figure: str, *, steps: int = 10) -> list[float
     handle.focus()
     latencies = []
     for step in range(steps):
+        page.evaluate(STANDS_STILL, figure)
         page.evaluate("step => { window.vxArmed = false; window.vxStep = (" + STEP + ")(step); }", figure)
         page.wait_for_function("() => window.vxArmed")
         page.keyboard.press("ArrowRight" if step % 2 == 0 else "PageUp")
         latencies.append(page.evaluate("() => window.vxStep")["latency"])
-        settle(page, quiet=400)  # until the full drawing at rest is over, which would pass for the next change
     return latencies
 
 
