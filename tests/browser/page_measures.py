@@ -52,7 +52,7 @@ STANDS_STILL = """selector => new Promise((done, fail) => {
     (function look() {
         const [now, after] = [performance.now(), vxPixels(selector)];
         if (shown === null || after === null || vxChanged(shown, after) > 0) [shown, since] = [after, now];
-        if (now - since > 600) done();
+        if (now - since > 450) done();
         else if (now - start > 20000) fail(new Error('the plot does not come to rest'));
         else setTimeout(look, 50);
     })();

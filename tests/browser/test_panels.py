@@ -91,7 +91,7 @@ def test_the_plot_of_the_appraisal_follows_a_slider(appraisal_page, capsys):
     appraisal_page.bring_to_front()
     handle = slider(appraisal_page, "core radius")
     median = tell_latency(
-        capsys, "AppraisalPanel, slider to plot", measure_latency(appraisal_page, handle, ".vx-figure", steps=12)
+        capsys, "AppraisalPanel, slider to plot", measure_latency(appraisal_page, handle, ".vx-figure", steps=10)
     )
     assert median < LIMIT
 
@@ -100,7 +100,7 @@ def test_the_plot_of_the_model_follows_a_slider(model_page, capsys):
     model_page.bring_to_front()
     handle = slider(model_page, "core radius")
     median = tell_latency(
-        capsys, "ModelPanel, slider to plot", measure_latency(model_page, handle, ".vx-figure", steps=12)
+        capsys, "ModelPanel, slider to plot", measure_latency(model_page, handle, ".vx-figure", steps=10)
     )
     assert median < LIMIT
 
