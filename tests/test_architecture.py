@@ -19,6 +19,7 @@ ORDER = [
     "models.model",
     "models.catalogue",
     "models.agreement",
+    "models.notation",
     "models.derivation",
     "models.vortex",
     "fluid_equations",

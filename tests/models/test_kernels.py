@@ -147,7 +147,7 @@ def test_shapes_of_arrays_and_numbers_are_kept(key):
         assert np.shape(kernel(1.5, *shape)) == ()
         assert kernel([[1.0, 2.0, 3.0]], *shape).shape == (1, 3)
         assert kernel(np.empty((0, 2)), *shape).shape == (0, 2)
-        many = np.linspace(0.1, 5.0, 20_001)  # longer than one part
+        many = np.linspace(0.1, 5.0, 20_001)
         np.testing.assert_array_equal(
             kernel(many, *shape)[[0, 9_999, 20_000]], kernel(many[[0, 9_999, 20_000]], *shape)
         )

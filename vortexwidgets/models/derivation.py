@@ -3,18 +3,15 @@
 from __future__ import annotations
 
 import math
-import re
 from dataclasses import dataclass
 from functools import lru_cache
-from typing import Any
 
 import sympy as sp
-from sympy.printing.latex import LatexPrinter
-from sympy.printing.str import StrPrinter
 
 from vortexwidgets.models.agreement import check_agreement
 from vortexwidgets.models.catalogue import model_named
 from vortexwidgets.models.model import VortexModel, X
+from vortexwidgets.models.notation import latex_of, text_of
 
 
 @dataclass(frozen=True)
@@ -50,22 +47,25 @@ class Derivation:
         Name.
     source : str
         Where the profile was published.
+    limits : str
+        For what it holds.
     steps : tuple of Step
     """
 
     model: str
     source: str
+    limits: str
     steps: tuple[Step, ...]
 
     def __str__(self) -> str:
-        lines = [f"{self.model} vortex. {self.source}"]
+        lines = [f"{self.model} vortex. {self.source}", self.limits]
         for number, step in enumerate(self.steps, start=1):
             lines += ["", f"{number}. {step.title}", f"   {step.sentence}"]
             lines += [f"      {part}" for part in step.text.splitlines()]
         return "\n".join(lines)
 
     def _repr_markdown_(self) -> str:
-        parts = [f"### {self.model} vortex\n\n{self.source}"]
+        parts = [f"### {self.model} vortex\n\n{self.source} {self.limits}"]
         parts += [
             f"**{number}. {step.title}.** {step.sentence}\n\n$${step.latex}$$"
             for number, step in enumerate(self.steps, start=1)
@@ -105,7 +105,7 @@ def _derived(model: VortexModel) -> Derivation:
     if model.pressure_drop != sp.oo:
         steps.append(_pressure(model))
     steps += [_centre(model), _peak(model), _balance(model), _agreement(model)]
-    return Derivation(model.name, model.source, tuple(steps))
+    return Derivation(model.name, model.source, model.limits, tuple(steps))
 
 
 # Steps ----------------------------------------------------------------------------------------------------------------
@@ -126,15 +126,15 @@ def _profile(model: VortexModel) -> Step:
     return Step(
         "Profile",
         f"The swirl velocity is declared as a scale times one function of x; positive is counter-clockwise.{where}",
-        rf"{head}, \quad x = \frac{{r}}{{{length}}}, \quad F(x) = {_latex(model.swirl)}",
-        f"v = V F(x){'' if scale == 'V' else f', V = {scale_text}'}, x = r/{length}\nF(x) = {_text(model.swirl)}",
+        rf"{head}, \quad x = \frac{{r}}{{{length}}}, \quad F(x) = {latex_of(model.swirl)}",
+        f"v = V F(x){'' if scale == 'V' else f', V = {scale_text}'}, x = r/{length}\nF(x) = {text_of(model.swirl)}",
     )
 
 
 def _conditions(model: VortexModel) -> Step:
     axis, far = model.at_axis("swirl"), model.far_away("enclosed_circulation")
-    latex = [rf"F(0) = {_latex(axis)}", rf"x F(x) \to {_latex(far)} \quad \left(x \to \infty\right)"]
-    text = [f"F(0) = {_text(axis)}", f"x F(x) → {_text(far)} for x → ∞"]
+    latex = [rf"F(0) = {latex_of(axis)}", rf"x F(x) \to {latex_of(far)} \quad \left(x \to \infty\right)"]
+    text = [f"F(0) = {text_of(axis)}", f"x F(x) → {text_of(far)} for x → ∞"]
     sentence = {
         sp.S.Zero: "The circulation vanishes far away: the vortex is shielded.",
         sp.S.One: "All circulation is found far away, so V is the circulation over the length.",
@@ -145,8 +145,10 @@ def _conditions(model: VortexModel) -> Step:
         (spin_in, _), (spin_out, _) = model.vorticity.args
         edge = model.edges[0]
         values = [sp.simplify(part.subs(X, edge)) for part in (inner, outer, spin_in, spin_out)]
-        latex.append(rf"F({_latex(edge)}^-) = {_latex(values[0])}, \quad F({_latex(edge)}^+) = {_latex(values[1])}")
-        text.append(f"F({edge}⁻) = {_text(values[0])}, F({edge}⁺) = {_text(values[1])}")
+        latex.append(
+            rf"F({latex_of(edge)}^-) = {latex_of(values[0])}, \quad F({latex_of(edge)}^+) = {latex_of(values[1])}"
+        )
+        text.append(f"F({edge}⁻) = {text_of(values[0])}, F({edge}⁺) = {text_of(values[1])}")
         sentence += (
             f" The swirl is continuous at the core edge; its slope is not, and the vorticity drops from {values[2]} to "
             f"{values[3]}, in units of V/r_c."
@@ -160,8 +162,8 @@ def _vorticity(model: VortexModel) -> Step:
         "Vorticity",
         "The curl of a flow that only turns has one component, along the axis.",
         rf"\omega = \frac{{1}}{{r}} \frac{{d (r v_\theta)}}{{d r}} = \frac{{V}}{{{length}}} W(x), \quad "
-        rf"W(x) = \frac{{1}}{{x}} \frac{{d (x F)}}{{d x}} = {_latex(model.vorticity)}",
-        f"ω = (1/r) d(r v)/dr = (V/{length}) W(x)\nW(x) = (1/x) d(xF)/dx = {_text(model.vorticity)}",
+        rf"W(x) = \frac{{1}}{{x}} \frac{{d (x F)}}{{d x}} = {latex_of(model.vorticity)}",
+        f"ω = (1/r) d(r v)/dr = (V/{length}) W(x)\nW(x) = (1/x) d(xF)/dx = {text_of(model.vorticity)}",
     )
 
 
@@ -171,8 +173,8 @@ def _circulation(model: VortexModel) -> Step:
     return Step(
         "Enclosed circulation",
         "The circulation along a circle is its length times the swirl.",
-        rf"\Gamma(r) = 2 \pi r v_\theta = {full} \, C(x), \quad C(x) = x F = {_latex(model.enclosed_circulation)}",
-        f"Γ(r) = 2π r v = {full_text} C(x), C(x) = x F = {_text(model.enclosed_circulation)}",
+        rf"\Gamma(r) = 2 \pi r v_\theta = {full} \, C(x), \quad C(x) = x F = {latex_of(model.enclosed_circulation)}",
+        f"Γ(r) = 2π r v = {full_text} C(x), C(x) = x F = {text_of(model.enclosed_circulation)}",
     )
 
 
@@ -200,8 +202,8 @@ def _pressure(model: VortexModel) -> Step:
         "Pressure drop",
         sentence,
         r"p_\infty - p = \rho V^2 P(x), \quad P(x) = \int_x^{\infty} \frac{F(t)^2}{t} dt = "
-        + _latex(model.pressure_drop),
-        f"p∞ - p = ρ V² P(x)\nP(x) = ∫ₓ^∞ F(t)²/t dt = {_text(model.pressure_drop)}",
+        + latex_of(model.pressure_drop),
+        f"p∞ - p = ρ V² P(x)\nP(x) = ∫ₓ^∞ F(t)²/t dt = {text_of(model.pressure_drop)}",
     )
 
 
@@ -211,8 +213,8 @@ def _centre(model: VortexModel) -> Step:
             "Pressure from the axis",
             "The drop from far away is infinite; the rise from the axis to a radius is not.",
             r"p(r) - p(0) = \rho V^2 \int_0^x \frac{F(t)^2}{t} dt = \rho V^2 \, "
-            + _latex(sp.integrate(model.swirl**2 / X, (X, 0, X))),
-            f"p(r) - p(0) = ρ V² ∫₀ˣ F(t)²/t dt = ρ V² · {_text(sp.integrate(model.swirl**2 / X, (X, 0, X)))}",
+            + latex_of(sp.integrate(model.swirl**2 / X, (X, 0, X))),
+            f"p(r) - p(0) = ρ V² ∫₀ˣ F(t)²/t dt = ρ V² · {text_of(sp.integrate(model.swirl**2 / X, (X, 0, X)))}",
         )
     value = model.centre
     if value == sp.oo:
@@ -222,8 +224,8 @@ def _centre(model: VortexModel) -> Step:
     return Step(
         "Drop on the axis",
         f"The deepest drop, p∞ - p(0) = ρ V² P(0){_at_default(model)}.",
-        rf"P(0) = {_latex(value)}{_approximately(value, number, 'latex')}",
-        f"P(0) = {_text(value)}{_approximately(value, number, 'text')}",
+        rf"P(0) = {latex_of(value)}{_approximately(value, number, 'latex')}",
+        f"P(0) = {text_of(value)}{_approximately(value, number, 'text')}",
     )
 
 
@@ -260,8 +262,8 @@ def _balance(model: VortexModel) -> Step:
         "Momentum balance",
         balance.sentence,
         r"-\frac{\partial v_\theta}{\partial t} - u_r \omega + \nu \frac{\partial \omega}{\partial r} = "
-        rf"\frac{{\nu V}}{{{length}^2}} R(x), \quad R(x) = {_latex(balance.left_over)}{law}",
-        f"-∂v/∂t - u_r ω + ν ∂ω/∂r = (ν V/{length}²) R(x){law_text}\nR(x) = {_text(balance.left_over)}",
+        rf"\frac{{\nu V}}{{{length}^2}} R(x), \quad R(x) = {latex_of(balance.left_over)}{law}",
+        f"-∂v/∂t - u_r ω + ν ∂ω/∂r = (ν V/{length}²) R(x){law_text}\nR(x) = {text_of(balance.left_over)}",
     )
 
 
@@ -278,86 +280,10 @@ def _agreement(model: VortexModel) -> Step:
     )
 
 
-# Writing --------------------------------------------------------------------------------------------------------------
-
-
-class _Latex(LatexPrinter):  # type: ignore[misc]
-    """LaTeX that simple converters read as well, without matrices."""
-
-    def _print_hyper(self, expr: sp.Expr, exp: Any = None) -> str:
-        above, below, at = (self._row(expr.args[0]), self._row(expr.args[1]), self._print(expr.args[2]))
-        written = rf"{{}}_{{{len(expr.args[0])}}}F_{{{len(expr.args[1])}}}\left({above}; {below}; {at}\right)"
-        return written if exp is None else rf"\left({written}\right)^{{{exp}}}"
-
-    def _print_Piecewise(self, expr: sp.Piecewise) -> str:  # noqa: N802
-        rows = [
-            rf"{self._print(value)} & {'otherwise' if condition == True else self._print(condition)}"  # noqa: E712
-            for value, condition in expr.args
-        ]
-        return (
-            r"\begin{cases} "
-            + r" \\ ".join(row.replace("otherwise", r"\text{otherwise}") for row in rows)
-            + r" \end{cases}"
-        )
-
-    def _print_beta(self, expr: sp.Expr, exp: Any = None) -> str:
-        written = rf"B\left({self._row(expr.args)}\right)"
-        return written if exp is None else rf"{written}^{{{exp}}}"
-
-    def _row(self, values: Any) -> str:
-        return ", ".join(self._print(value) for value in values)
-
-
-class _Text(StrPrinter):  # type: ignore[misc]
-    """One line of Unicode."""
-
-    def _print_hyper(self, expr: sp.Expr) -> str:
-        above, below, at = expr.args
-        low = str.maketrans("0123456789", "₀₁₂₃₄₅₆₇₈₉")
-        name = f"{str(len(above)).translate(low)}F{str(len(below)).translate(low)}"
-        return f"{name}({self.stringify(above, ', ')}; {self.stringify(below, ', ')}; {self._print(at)})"
-
-    def _print_expint(self, expr: sp.Expr) -> str:
-        return f"E{'₁' if expr.args[0] == 1 else expr.args[0]}({self._print(expr.args[1])})"
-
-    def _print_beta(self, expr: sp.Expr) -> str:
-        return f"B({self.stringify(expr.args, ', ')})"
-
-    def _print_LambertW(self, expr: sp.Expr) -> str:  # noqa: N802
-        branch = "₋₁" if len(expr.args) > 1 else "₀"
-        return f"W{branch}({self._print(expr.args[0])})"
-
-    def _print_Piecewise(self, expr: sp.Piecewise) -> str:  # noqa: N802
-        rows = [
-            f"{self._print(value)} {'otherwise' if condition == True else f'for {self._print(condition)}'}"  # noqa: E712
-            for value, condition in expr.args
-        ]
-        return "; ".join(rows)
-
-    def _print_log(self, expr: sp.Expr) -> str:
-        return f"ln({self._print(expr.args[0])})"
-
-    def _print_Exp1(self, expr: sp.Expr) -> str:  # noqa: N802
-        return "e"
-
-    def _print_Infinity(self, expr: sp.Expr) -> str:  # noqa: N802
-        return "∞"
-
-
-def _latex(expression: sp.Expr) -> str:
-    return str(_Latex({"ln_notation": True}).doprint(expression))
-
-
-def _text(expression: sp.Expr) -> str:
-    plain = str(_Text().doprint(expression)).replace("**", "^").replace("*", "·").replace("<=", "≤")
-    high = str.maketrans("0123456789", "⁰¹²³⁴⁵⁶⁷⁸⁹")
-    return re.sub(r"\^(\d+)", lambda found: found.group(1).translate(high), plain)
-
-
 def _given(name: str, value: sp.Expr | None, number: float, kind: str) -> str:
     if value is None:
         return f"{name} = {_digits(number)}"
-    return f"{name} = {_latex(value) if kind == 'latex' else _text(value)}{_approximately(value, number, kind)}"
+    return f"{name} = {latex_of(value) if kind == 'latex' else text_of(value)}{_approximately(value, number, kind)}"
 
 
 def _approximately(value: sp.Expr, number: float, kind: str) -> str:

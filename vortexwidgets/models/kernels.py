@@ -20,7 +20,6 @@ Kernel = Callable[..., FloatArray]
 # Nearer to the axis and farther out than these the squares of x leave double precision; the limits hold there.
 NEAREST, FARTHEST = 1e-100, 1e60
 
-_CHUNK = 8192  # temporaries of this size stay in the cache
 _SPECIAL = ("exp1", "expn", "beta", "hyp1f1", "hyp2f1", "gamma", "lambertw")
 
 
@@ -102,32 +101,22 @@ def kernel(
     """
     inner = together((prepare(expression, x),), x, shape)
 
-    def ordinary(at: FloatArray, numbers: tuple[float, ...]) -> FloatArray:
-        """All values inside the range where nothing over- or underflows."""
-        if at.size <= _CHUNK:
-            return inner(at, *numbers)[0]  # type: ignore[no-any-return]
-        result = np.empty(at.size)
-        for start in range(0, at.size, _CHUNK):
-            part = slice(start, start + _CHUNK)
-            result[part] = inner(at[part], *numbers)[0]
-        return result
-
     def evaluate(at: npt.ArrayLike, *numbers: float) -> FloatArray:
         given = np.asarray(at, dtype=np.float64)
         flat = given.reshape(-1)
         if flat.size == 0:
             return np.empty(given.shape)
         if flat.min() >= NEAREST and flat.max() <= FARTHEST:
-            result = ordinary(flat, numbers)
+            result: FloatArray = inner(flat, *numbers)[0]
         else:
             result = np.full(flat.shape, math.nan)
             inside = (flat >= NEAREST) & (flat <= FARTHEST)
-            result[inside] = ordinary(flat[inside], numbers)
+            result[inside] = inner(flat[inside], *numbers)[0]
             result[flat > FARTHEST] = far(*numbers)
             near = flat < NEAREST
             limit = axis(*numbers)
             if limit == 0.0 and power and near.any():
-                result[near] = ordinary(np.array([NEAREST]), numbers) * (flat[near] / NEAREST) ** power
+                result[near] = inner(np.array([NEAREST]), *numbers)[0] * (flat[near] / NEAREST) ** power
             else:
                 result[near] = limit
         return result.reshape(given.shape)[()]
