@@ -237,8 +237,9 @@ def _laid_out(survey: Survey, instrument: Instrument | None, background: Backgro
 def _stations(survey: Survey) -> npt.NDArray[np.intp] | None:
     chosen = survey.in_plane
     keys = np.column_stack([survey.x[chosen], survey.y[chosen], survey.direction[chosen]])
-    readings, station = np.unique(keys, axis=0, return_inverse=True)
-    return np.ravel(station) if len(readings) < len(keys) else None
+    if len(set(map(tuple, keys.tolist()))) == len(keys):  # the usual case, without sorting
+        return None
+    return np.ravel(np.unique(keys, axis=0, return_inverse=True)[1])
 
 
 def _background_columns(
