@@ -10,7 +10,7 @@ from datetime import UTC, datetime
 from functools import cached_property
 from importlib.metadata import version
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, TypeVar
 
 from vortexwidgets import record
 from vortexwidgets.cautions import assumptions_of, may_have_missed, reference_sentence, survey_cautions
@@ -44,6 +44,8 @@ from vortexwidgets.uncertainty import Contribution, Estimate
 if TYPE_CHECKING:
     from vortexwidgets.fitting.problem import Background
     from vortexwidgets.models.model import VortexModel
+
+Named = TypeVar("Named", Consequence, CoreDrop)
 
 _CAUTION_BEYOND, _UNDETERMINED_BEYOND = 0.10, 0.30  # shares of the drop that no station saw
 _COMPRESSIBLE = 0.02  # of the ambient pressure
@@ -235,7 +237,7 @@ class Appraisal:
         return target
 
 
-def _named(items: Sequence[Any], name: str, kind: str) -> Any:
+def _named(items: Sequence[Named], name: str, kind: str) -> Named:
     for item in items:
         if item.name == name:
             return item

@@ -82,7 +82,7 @@ class PlanePlot:
         self._map = _seen_map("viridis_r" if theme == "light" else "viridis")
         self._bar_axes = figure.add_axes((0.9, 0.5, 0.02, 0.4))
         self._bar = figure.colorbar(ScalarMappable(self._sizes, self._map), cax=self._bar_axes)
-        self._bar.outline.set_visible(False)  # type: ignore[operator]
+        self._bar.outline.set_visible(False)
         self._bar_axes.tick_params(colors=self._theme.text, labelsize=SMALL, length=3.0)
         self._bar_axes.yaxis.label.set(color=self._theme.text, fontsize=FONT_SIZE)
         self._arrows: Any = None

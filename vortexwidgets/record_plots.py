@@ -153,7 +153,7 @@ def picture(
 
     with use_theme(theme) as colours, rc_context(_rc(colours)):
         figure = Figure(figsize=size, dpi=dots_per_inch)
-        canvas = FigureCanvasAgg(figure)
+        canvas: Any = FigureCanvasAgg(figure)  # untyped in Matplotlib
         draw(figure, colours)
         canvas.draw()
         pixels = np.asarray(canvas.buffer_rgba())
@@ -170,7 +170,7 @@ def fill(axes: Axes, *, left: float, bottom: float = 0.52, right: float = 0.2, t
     axes.set_position((left / width, bottom / height, 1.0 - (left + right) / width, 1.0 - (bottom + top) / height))
 
 
-def _rc(theme: Theme) -> dict[str, Any]:
+def _rc(theme: Theme) -> Any:
     """Colours for what is drawn without being told any."""
     from cycler import cycler
 

@@ -15,14 +15,14 @@ def missing(reason: str):
     pytest.skip(f"{reason}: apt-get install chromium, pip install 'vortexwidgets[test]'")
 
 
-@pytest.fixture(scope="session")
+@pytest.fixture(scope="module")
 def artefacts():
     folder = Path(__file__).parent / "artefacts"
     folder.mkdir(exist_ok=True)
     return folder
 
 
-@pytest.fixture(scope="session")
+@pytest.fixture(scope="module")
 def chromium(tmp_path_factory):
     try:
         import playwright  # noqa: F401
@@ -35,7 +35,7 @@ def chromium(tmp_path_factory):
         yield context
 
 
-@pytest.fixture(scope="session")
+@pytest.fixture(scope="module")
 def lab(tmp_path_factory, chromium):
     with running_lab(tmp_path_factory.mktemp("notebooks"), tmp_path_factory.mktemp("lab")) as lab:
         yield lab

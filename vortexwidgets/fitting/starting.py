@@ -19,8 +19,8 @@ _MOST_POINTS = 240  # of a planar field, for the search only
 def search(problem: Problem, *, centre: tuple[float | None, float | None], several: int = 1) -> list[list[float]]:
     """Likeliest (centre_x, centre_y, peak_radius), best first.
 
-    Every candidate is a Kaufmann profile, whose strength and background are eliminated; it needs no exponential and lies
-    between the published profiles.
+    Every candidate is a Kaufmann profile, whose strength and background are eliminated; it needs no exponential and
+    lies between the published profiles.
 
     Parameters
     ----------

@@ -124,7 +124,7 @@ def kernel(
     return evaluate
 
 
-class _Printer(NumPyPrinter):  # type: ignore[misc]
+class _Printer(NumPyPrinter):
     """NumPy code without the detours that SymPy's own printer takes."""
 
     def _print_Min(self, expression: sp.Expr) -> str:  # noqa: N802

@@ -36,7 +36,7 @@ def text_of(expression: sp.Expr) -> str:
     return re.sub(r"\^(\d+)", lambda found: found.group(1).translate(high), plain)
 
 
-class _Latex(LatexPrinter):  # type: ignore[misc]
+class _Latex(LatexPrinter):
     """LaTeX that simple converters read as well, without matrices."""
 
     def _print_hyper(self, expr: sp.Expr, exp: Any = None) -> str:
@@ -63,7 +63,7 @@ class _Latex(LatexPrinter):  # type: ignore[misc]
         return ", ".join(self._print(value) for value in values)
 
 
-class _Text(StrPrinter):  # type: ignore[misc]
+class _Text(StrPrinter):
     """One line of Unicode."""
 
     def _print_hyper(self, expr: sp.Expr) -> str:
