@@ -11,7 +11,8 @@ from matplotlib.figure import Figure
 
 from vortexwidgets.fitting.ranking import rank_models
 from vortexwidgets.models.vortex import Vortex
-from vortexwidgets.plot_style import (
+from vortexwidgets.plots import PlanePlot, ProfilePlot, SurveyPlot
+from vortexwidgets.plots.style import (
     LINE_STYLES,
     THEMES,
     label_axis,
@@ -21,7 +22,6 @@ from vortexwidgets.plot_style import (
     theme_named,
     use_theme,
 )
-from vortexwidgets.plots import PlanePlot, ProfilePlot, SurveyPlot
 from vortexwidgets.survey.survey import Survey
 
 

@@ -15,12 +15,13 @@ from colour_vision import contrast
 from hypothesis import given
 from hypothesis import strategies as st
 
-from vortexwidgets import record, record_page
 from vortexwidgets.appraisal import REGISTRY, Appraisal, appraise, load_appraisal
 from vortexwidgets.models.catalogue import MODELS
 from vortexwidgets.models.derivation import derivation
 from vortexwidgets.models.vortex import Vortex
-from vortexwidgets.record_maths import font_rule, formulas, mathml
+from vortexwidgets.record import page as record_page
+from vortexwidgets.record import saving as record
+from vortexwidgets.record.maths import font_rule, formulas, mathml
 from vortexwidgets.survey.reading import example_survey
 from vortexwidgets.survey.samples import DroppedRow
 from vortexwidgets.survey.survey import Survey

@@ -12,7 +12,6 @@ from importlib.metadata import version
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TypeVar
 
-from vortexwidgets import record
 from vortexwidgets.cautions import assumptions_of, may_have_missed, reference_sentence, survey_cautions
 from vortexwidgets.circumstances import fluid_of, instrument_of, site_of
 from vortexwidgets.consequences import assess_all
@@ -35,6 +34,7 @@ from vortexwidgets.fluids import Fluid, Site
 from vortexwidgets.formatting import format_estimate, format_number, table
 from vortexwidgets.models.agreement import Agreement, AgreementRow, check_agreement
 from vortexwidgets.models.vortex import Vortex
+from vortexwidgets.record import saving
 from vortexwidgets.survey.instrument import Instrument
 from vortexwidgets.survey.samples import DroppedRow, Provenance
 from vortexwidgets.survey.screening import Screening, screen
@@ -211,27 +211,27 @@ class Appraisal:
         return f"<Appraisal: {self.answer}>"
 
     def __eq__(self, other: object) -> bool:
-        return isinstance(other, Appraisal) and record.encode(self) == record.encode(other)
+        return isinstance(other, Appraisal) and saving.encode(self) == saving.encode(other)
 
     def __hash__(self) -> int:
         return hash((self.answer, self.created))
 
     def to_json(self) -> str:
         """The appraisal as JSON text that `from_json` turns back into an equal one."""
-        return record.to_json(self)
+        return saving.to_json(self)
 
     @staticmethod
     def from_json(text: str) -> Appraisal:
         """An appraisal from its JSON text; nothing in it is executed."""
-        return _checked(record.from_json(text, REGISTRY))
+        return _checked(saving.from_json(text, REGISTRY))
 
     def save(self, path: str | Path) -> Path:
         """Write the record: .html for people, .json for machines; an interrupted write leaves nothing half-done."""
         target = Path(path)
         if target.suffix == ".html":
-            record.save_html(self, target)
+            saving.save_html(self, target)
         elif target.suffix == ".json":
-            record.save_json(self, target)
+            saving.save_json(self, target)
         else:
             raise ValueError(f"A record ends in .html or .json, got {target.name!r}.")
         return target
@@ -246,7 +246,7 @@ def _named(items: Sequence[Named], name: str, kind: str) -> Named:
 
 def load_appraisal(path: str | Path) -> Appraisal:
     """Load an appraisal from a JSON record."""
-    return _checked(record.load_json(path, REGISTRY))
+    return _checked(saving.load_json(path, REGISTRY))
 
 
 def _checked(value: Any) -> Appraisal:

@@ -355,3 +355,18 @@ def _shortest(value: float) -> str:
         return text
     mantissa, exponent = text.split("e")
     return f"{mantissa} × 10{_exponent(int(exponent))}"
+
+
+def percent(share: float) -> str:
+    """Return a share as text.
+
+    Examples
+    --------
+    >>> percent(0.1234), percent(3e-7), percent(0.0)
+    ('12.3 %', '< 0.1 %', '0 %')
+    """
+    if math.isnan(share):
+        return "undetermined"
+    if 0.0 < share < 0.001:
+        return "< 0.1 %"
+    return f"{100.0 * share:.1f} %" if share else "0 %"

@@ -215,7 +215,7 @@ def draw_sentence(axes: Axes, consequence: Consequence) -> None:
     """Fill axes that have nothing to plot with what is missing."""
     from textwrap import fill
 
-    from vortexwidgets.plot_style import FONT_SIZE, dress, theme_in_use
+    from vortexwidgets.plots.style import FONT_SIZE, dress, theme_in_use
 
     theme = theme_in_use()
     dress(axes, theme)

@@ -60,6 +60,6 @@ def mirrored(values: FloatArray, *, odd: bool = False) -> FloatArray:
 
 def label_distance(axes: Axes) -> None:
     """Label the distance from the axis of the vortex."""
-    from vortexwidgets.plot_style import label_axis
+    from vortexwidgets.plots.style import label_axis
 
     label_axis(axes, "x", "distance from the axis", "m")

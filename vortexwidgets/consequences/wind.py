@@ -545,7 +545,7 @@ def draw(axes: Axes, consequence: Consequence) -> None:
     if not radius.size:
         draw_sentence(axes, consequence)
         return
-    from vortexwidgets.plot_style import dress, label_axis, theme_in_use
+    from vortexwidgets.plots.style import dress, label_axis, theme_in_use
 
     theme = theme_in_use()
     dress(axes, theme)

@@ -13,7 +13,7 @@ from vortexwidgets.formatting import format_number
 from vortexwidgets.models.agreement import check_agreement
 from vortexwidgets.models.derivation import Derivation, derivation
 from vortexwidgets.models.vortex import Vortex
-from vortexwidgets.plots import ProfilePlot
+from vortexwidgets.plots.profile import ProfilePlot
 from vortexwidgets.quantities import check
 from vortexwidgets.widgets.canvas import FrontEnd, LiveFigure, Theme
 from vortexwidgets.widgets.controls import NumberControl, Scale

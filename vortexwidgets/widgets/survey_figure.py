@@ -7,7 +7,8 @@ from typing import TYPE_CHECKING, Any
 
 import ipywidgets
 
-from vortexwidgets.plots import PlanePlot, SurveyPlot
+from vortexwidgets.plots.plane import PlanePlot
+from vortexwidgets.plots.survey import SurveyPlot
 from vortexwidgets.widgets.canvas import FrontEnd, LiveFigure, Theme
 from vortexwidgets.widgets.panel import FIGURE_WIDTH
 from vortexwidgets.widgets.state import JobState, SurveyState, VortexState

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 import numpy.typing as npt
 
-from vortexwidgets.plot_style import (
+from vortexwidgets.plots.style import (
     LINE_WIDTH,
     ThemeName,
     dress,

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 import numpy.typing as npt
 
-from vortexwidgets.plot_style import (
+from vortexwidgets.plots.style import (
     FONT_SIZE,
     LINE_WIDTH,
     SMALL,

@@ -42,21 +42,6 @@ def value_rows(value: Any, *, skip: Sequence[str] = ()) -> list[Row]:
     ]
 
 
-def percent(share: float) -> str:
-    """Return a share as text.
-
-    Examples
-    --------
-    >>> percent(0.1234), percent(3e-7), percent(0.0)
-    ('12.3 %', '< 0.1 %', '0 %')
-    """
-    if math.isnan(share):
-        return "undetermined"
-    if 0.0 < share < 0.001:
-        return "< 0.1 %"
-    return f"{100.0 * share:.1f} %" if share else "0 %"
-
-
 def probability(chance: float | None) -> str:
     """Return a probability as text, never as a certainty that nobody has.
 

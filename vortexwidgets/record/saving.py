@@ -9,7 +9,7 @@ from importlib.metadata import version
 from pathlib import Path
 from typing import Any
 
-from vortexwidgets.record_values import decode, encode
+from vortexwidgets.record.values import decode, encode
 
 FORMAT = "vortexwidgets record"
 FORMAT_VERSION = 1
@@ -150,7 +150,7 @@ def page(appraisal: Any) -> str:
     str
         Text that came from files is escaped; there is no script in it.
     """
-    from vortexwidgets.record_page import render
+    from vortexwidgets.record.page import render
 
     return render(appraisal)
 

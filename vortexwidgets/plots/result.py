@@ -9,7 +9,8 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from vortexwidgets.plot_style import (
+from vortexwidgets.formatting import percent
+from vortexwidgets.plots.style import (
     SMALL,
     Theme,
     dress,
@@ -18,7 +19,6 @@ from vortexwidgets.plot_style import (
     theme_in_use,
     use_theme,
 )
-from vortexwidgets.record_texts import percent
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

@@ -8,16 +8,15 @@ from functools import cache
 from pathlib import Path
 from typing import Any
 
-from vortexwidgets.formatting import format_estimate, format_number
-from vortexwidgets.record_figures import consequence_figure, figures
-from vortexwidgets.record_maths import font_rule, formulas
-from vortexwidgets.record_texts import (
+from vortexwidgets.formatting import format_estimate, format_number, percent
+from vortexwidgets.record.figures import consequence_figure, figures
+from vortexwidgets.record.maths import font_rule, formulas
+from vortexwidgets.record.texts import (
     Row,
     full_text,
     in_unit_of,
     interval_text,
     number_text,
-    percent,
     probability,
     shown,
     value_rows,
@@ -258,7 +257,7 @@ def data_shares(data_drop: Any) -> list[tuple[str, str, str]]:
 
 def budgets(appraisal: Any) -> list[dict[str, Any]]:
     """Which input contributes how much, for the drop and for the pressure on the axis."""
-    from vortexwidgets.record_plots import sorted_budget
+    from vortexwidgets.plots.result import sorted_budget
 
     tables = []
     for name, estimate in (
@@ -347,5 +346,5 @@ def _template() -> Any:
     environment = jinja2.Environment(
         autoescape=True, undefined=jinja2.StrictUndefined, trim_blocks=True, lstrip_blocks=True
     )
-    source = Path(__file__).with_name("record_page.html.jinja").read_text(encoding="utf-8")
+    source = Path(__file__).with_name("page.html.jinja").read_text(encoding="utf-8")
     return environment.from_string(source)

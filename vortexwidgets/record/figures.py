@@ -7,13 +7,13 @@ import dataclasses
 from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
 
-from vortexwidgets.formatting import format_estimate, format_number
-from vortexwidgets.record_texts import percent, value_text
+from vortexwidgets.formatting import format_estimate, format_number, percent
+from vortexwidgets.record.texts import value_text
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-    from vortexwidgets.plot_style import Theme
+    from vortexwidgets.plots.style import Theme
 
 _WIDTH = 6.6  # inch, at 160 dots per inch three pixels of the picture for two of the page
 
@@ -32,9 +32,10 @@ class FigureData:
 
 def figures(appraisal: Any) -> dict[str, FigureData | None]:
     """The figures of the sections, by name."""
-    from vortexwidgets.plots import PlanePlot, ProfilePlot, SurveyPlot
-    from vortexwidgets.profile_plot import MOST_VORTICES
-    from vortexwidgets.record_plots import budget_plot, drop_plot, ranking_plot
+    from vortexwidgets.plots.plane import PlanePlot
+    from vortexwidgets.plots.profile import MOST_VORTICES, ProfilePlot
+    from vortexwidgets.plots.result import budget_plot, drop_plot, ranking_plot
+    from vortexwidgets.plots.survey import SurveyPlot
 
     survey, models = appraisal.survey, appraisal.models
     best = models[0].names[0]
@@ -131,7 +132,7 @@ def consequence_figure(item: Any) -> FigureData | None:
 
 
 def _lone(figure: Figure, *, left: float, top: float = 0.15) -> Any:
-    from vortexwidgets.record_plots import fill
+    from vortexwidgets.plots.result import fill
 
     axes = figure.add_subplot()
     fill(axes, left=left, top=top)
@@ -141,7 +142,7 @@ def _lone(figure: Figure, *, left: float, top: float = 0.15) -> Any:
 def _figure(
     draw: Callable[[Figure, Theme], object], size: tuple[float, float], *, alt: str, caption: str
 ) -> FigureData:
-    from vortexwidgets.record_plots import picture
+    from vortexwidgets.plots.result import picture
 
     light, dark = (
         "data:image/png;base64," + base64.b64encode(picture(draw, size=size, theme=theme)).decode("ascii")
