@@ -1,7 +1,9 @@
 """Wind: compressible drop, rate of a passing vortex, readings that contradict each other, the verdict."""
 
+import dataclasses
 import math
 
+import numpy as np
 import pytest
 from core_examples import NO_MODEL, core_of, rankine
 from matplotlib.figure import Figure
@@ -51,8 +53,6 @@ def test_constant_density_is_too_deep_by(drop, too_deep):
 
 def test_expansion_obeys_the_radial_balance():
     """Derived: p/ρ^γ constant and dp/dr = ρv²/r integrated in 20 000 steps from afar for a Kaufmann vortex."""
-    import numpy as np
-
     vortex = Vortex("kaufmann", circulation=2.0 * math.pi * 100.0 * 120.0, core_radius=100.0)
     far_pressure, far_density, gamma = 1e5, 1.2, 1.4
     log_r = np.linspace(math.log(1e5), math.log(1e-2), 20_001)
@@ -110,6 +110,84 @@ def test_the_rate_carries_the_choice_of_model():
 def test_a_bound_of_the_drop_bounds_the_rate():
     site = Site(orientation="air", translation_speed=20.0)
     assert assessed(4000.0, bound="lower", site=site).detail("Largest rate of pressure change").bound == "lower"
+
+
+SEEDS = range(20)
+
+
+def holds(bounds, truth):
+    """Limits of 95 % on one side each fail at most three times in 20, with a probability of 98 % and more."""
+    assert len(bounds) == len(SEEDS)
+    assert all(bound.bound == "lower" and bound.value > 0.3 * truth for bound in bounds)
+    assert sum(bound.value > truth for bound in bounds) <= 3
+
+
+def test_the_least_rate_and_wind_hold_where_the_line_missed_the_axis():
+    """Derived: Kaufmann missed by h is met as Kaufmann with the core √(r_c² + h²) and the same circulation."""
+    circulation, size, translation = 2.0 * math.pi * 40.0 * 120.0, 40.0, 20.0
+    truth = Vortex("kaufmann", circulation=circulation, core_radius=size)
+    site = Site(orientation="air", translation_speed=(translation, 1.0))
+    rates, winds = [], []
+    for seed in SEEDS:
+        generator = np.random.default_rng(seed)
+        met = math.hypot(size, 0.2 * size * generator.random())
+        core_radius, strength = met * generator.normal(1.0, 0.05), circulation * generator.normal(1.0, 0.03)
+        vortex = Vortex("kaufmann", circulation=strength, core_radius=core_radius)
+        seen = float(vortex.pressure_drop(0.0, density=1.25))
+        core = dataclasses.replace(
+            core_of(vortex, GAS, missed_axis=True),
+            drop=Estimate(0.77 * seen, math.nan, "core_pressure_drop", bound="lower"),  # 2 √(0.03² + 0.05²), two-sided
+            peak_radius=Estimate(vortex.peak_radius, 0.05 * vortex.peak_radius, "peak_radius"),
+            peak_swirl=Estimate(vortex.peak_swirl, 0.058 * vortex.peak_swirl, "peak_swirl"),
+        )
+        found = wind.assess(core, GAS, site)
+        rates.append(found.detail("Largest rate of pressure change"))
+        winds.append(found.detail("Combined wind"))
+        assert any("combined wind is a lower bound" in note for note in found.notes)
+    steepest = (circulation / (2.0 * math.pi * size)) ** 2 / size * 3.0 * math.sqrt(3.0) / 16.0  # derived, at r_c/√3
+    holds(rates, translation * 1.25 * steepest)
+    holds(winds, truth.peak_swirl + translation)
+
+
+def test_the_least_rate_goes_with_the_least_drop_over_the_largest_core():
+    """Rankine, (U_t/R) Δp (Regulatory Guide 1.76 Rev. 1, from memory), each at its 95 % limit, by hand."""
+    vortex = rankine(60.0, 40.0)
+    core = dataclasses.replace(
+        core_of(vortex, GAS, drop=Estimate(3000.0, math.nan, "core_pressure_drop", bound="lower")),
+        peak_radius=Estimate(50.0, math.nan, "peak_radius", bound="upper"),
+        peak_swirl=Estimate(60.0, math.nan, "peak_swirl", bound="lower"),
+    )
+    found = wind.assess(core, GAS, Site(orientation="air", translation_speed=(20.0, 2.0)))
+    expected = (20.0 - 1.95996 * 2.0) / 50.0 * 3000.0
+    assert found.detail("Largest rate of pressure change").value == pytest.approx(expected, rel=1e-5)
+
+
+def test_no_rate_is_given_where_nothing_limits_the_core():
+    core = dataclasses.replace(
+        core_of(rankine(60.0, 40.0), GAS, bound="lower"), peak_radius=Estimate(math.nan, math.nan, "peak_radius")
+    )
+    found = wind.assess(core, GAS, Site(orientation="air", translation_speed=20.0))
+    assert "Largest rate of pressure change" not in dict(found.details)
+    assert any("rate of pressure change is not given" in note for note in found.notes)
+
+
+def test_the_least_fall_holds_when_the_ambient_pressure_is_uncertain():
+    """True drop 20 kPa from 90 kPa, where expansion depends on the ambient pressure."""
+    truth = float(wind.compressible_drop(20e3, ambient_pressure=90e3))
+    least = Estimate(20e3, math.nan, "core_pressure_drop", bound="lower")
+    falls = []
+    for seed in SEEDS:
+        generator = np.random.default_rng(seed)
+        ambient = Estimate(90e3 + 20e3 * generator.standard_normal(), 20e3, "ambient_pressure")
+        core = core_of(rankine(126.0, 40.0), GAS, ambient=ambient, drop=least)
+        falls.append(wind.assess(core, GAS, Site(orientation="air")).estimate)
+    holds(falls, truth)
+
+
+def test_a_limit_of_the_drop_is_not_compared_as_a_reading():
+    core = core_of(rankine(60.0, 40.0), GAS, drop=Estimate(2000.0, math.nan, "core_pressure_drop", bound="lower"))
+    found = wind.assess(core, GAS, Site(orientation="air"))
+    assert not any("less than the 1 of a Rankine core" in note for note in found.notes)
 
 
 def test_without_a_translation_speed_the_rate_is_asked_for():

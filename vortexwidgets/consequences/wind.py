@@ -388,7 +388,8 @@ def assess(core: Core, fluid: Fluid, site: Site) -> Consequence | None:
         details += _passing(core, site, notes)
         notes += _regions(fall, core)
         constant = required_pressure_constant(core.drop.value, core.vortex.peak_swirl, density=core.density.value)
-        if not 0.95 <= constant <= 2.05:  # the ends are those of Rankine and Kaufmann themselves
+        # A limit of the drop is no reading; the ends are those of Rankine and Kaufmann themselves.
+        if fall.bound is None and not 0.95 <= constant <= 2.05:
             notes.append(compare_readings(core.drop.value, core.vortex.peak_swirl, density=core.density.value))
     return Consequence(
         name=NAME,
@@ -439,8 +440,10 @@ def _fall(core: Core, fluid: Fluid, site: Site, notes: list[str]) -> Estimate:
         )
 
     if drop.bound is not None:
-        least = float(compressible_drop(drop.value, ambient_pressure=ambient.value, heat_capacity_ratio=ratio))
-        return Estimate(least, math.nan, quantity, bound=drop.bound)
+        # The denser the gas stays, the deeper the drop: the low end of the ambient pressure is that of the least drop.
+        end = max(ambient.interval(LEVEL)[0 if drop.bound == "lower" else 1], 1.0)
+        limit = float(compressible_drop(drop.value, ambient_pressure=end, heat_capacity_ratio=ratio))
+        return Estimate(limit, math.nan, quantity, bound=drop.bound)
     inputs = {"core pressure drop": drop, "reference pressure": ambient}
     linear = propagate(formula, inputs, quantity=quantity)
     if drop.quantiles is None:
@@ -456,46 +459,78 @@ def _passing(core: Core, site: Site, notes: list[str]) -> list[tuple[str, Estima
         notes.append("Give Site(translation_speed=...) for the rate of pressure change and the combined wind.")
         return []
     rows: list[tuple[str, Estimate]] = []
-    if core.peak_swirl.is_determined:
-        swirl = dataclasses.replace(core.peak_swirl, value=abs(core.peak_swirl.value), quantiles=None)
-        wind = propagate(
-            lambda **p: p["peak swirl"] + p["translation speed"],
-            {"peak swirl": swirl, "translation speed": speed},
-            quantity="speed",
-        )
+    wind = _combined(core, speed)
+    if wind is not None:
         rows.append(("Combined wind", wind))
-    rate = _rate(core, speed)
-    if rate is None:
-        notes.append("The rate of pressure change is not given, because the core is not resolved.")
-        return rows
-    if rate.bound is not None:
-        notes.append("The rate is a lower bound, as the drop is.")
-    else:
+        if core.missed_axis:
+            notes.append(
+                "The line may have missed the axis, where the swirl is larger than what it met: the combined wind is a "
+                "lower bound."
+            )
+    if core.drop.bound is not None or core.missed_axis:
+        rate = _least_rate(core, speed)
         notes.append(
-            "In the rate, peak swirl and peak radius are taken as independent; the density is that far away, on the "
-            "safe side."
+            "The rate of pressure change is not given, because the core is not resolved."
+            if rate is None
+            else "The rate is a lower bound, as the drop is: the least drop over the largest core, at the least speed, "
+            "each at its 95 % limit, for the shapes of the models that are not rejected."
         )
-    return [("Largest rate of pressure change", rate), *rows]
+    else:
+        rate = _rate(core, speed)
+        notes.append(
+            "The rate of pressure change is not given, because the core is not resolved."
+            if rate is None
+            else "In the rate, peak swirl and peak radius are taken as independent; the density is that far away, on "
+            "the safe side."
+        )
+    return rows if rate is None else [("Largest rate of pressure change", rate), *rows]
+
+
+def _combined(core: Core, speed: Estimate) -> Estimate | None:
+    """Peak swirl plus translation speed; its 95 % lower limit where the line may have missed the largest swirl."""
+    if not core.peak_swirl.is_determined:
+        return None
+    swirl = dataclasses.replace(core.peak_swirl, value=abs(core.peak_swirl.value), quantiles=None)
+    wind = propagate(
+        lambda **p: p["peak swirl"] + p["translation speed"],
+        {"peak swirl": swirl, "translation speed": speed},
+        quantity="speed",
+    )
+    if core.missed_axis:
+        return Estimate(max(wind.interval(LEVEL)[0], 0.0), math.nan, "speed", bound="lower")
+    return wind
+
+
+def _least_rate(core: Core, speed: Estimate) -> Estimate | None:
+    """Lower bound of the largest ρv²/r times translation speed: for a given shape it goes with Δp/r."""
+    least, largest, slowest = (
+        core.drop.interval(LEVEL)[0],
+        core.peak_radius.interval(LEVEL)[1],
+        speed.interval(LEVEL)[0],
+    )
+    if not (least > 0.0 and slowest > 0.0 and math.isfinite(largest)):
+        return None
+    shape = min(
+        _steepest(vortex) * vortex.peak_radius / float(vortex.pressure_drop(0.0, density=1.0))
+        for vortex in (core.vortex, *core.supported)
+    )
+    return Estimate(shape * least / largest * slowest, math.nan, "pressure_rate", bound="lower")
 
 
 def _rate(core: Core, speed: Estimate) -> Estimate | None:
     """Largest ρv²/r times translation speed, from peak swirl and radius, whose shape factor the models differ in."""
+    if not (core.peak_swirl.is_determined and core.peak_radius.is_determined):
+        return None
     factors = [
         _steepest(vortex) * vortex.peak_radius / vortex.peak_swirl**2 for vortex in (core.vortex, *core.supported)
     ]
-    first = factors[0]
-    if core.drop.bound is not None:
-        least = pressure_rate(core.vortex, translation_speed=speed.value, density=core.density.value)
-        return Estimate(least, math.nan, "pressure_rate", bound="lower")
-    if not (core.peak_swirl.is_determined and core.peak_radius.is_determined):
-        return None
     spread = float(np.std(factors[1:])) if len(factors) > 2 else 0.0
     return propagate(
         lambda **p: (
             p["choice of model"] * p["density"] * p["peak swirl"] ** 2 / p["peak radius"] * p["translation speed"]
         ),
         {
-            "choice of model": (first, spread),
+            "choice of model": (factors[0], spread),
             "density": core.density,
             "peak swirl": core.peak_swirl,
             "peak radius": core.peak_radius,
