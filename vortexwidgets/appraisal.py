@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 import sys
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime
 from functools import cached_property
 from importlib.metadata import version
@@ -23,11 +23,13 @@ from vortexwidgets.core_pressure import (
     combined_drop,
     core_pressure_of,
     named_drops,
+    relative_to,
     share_beyond,
     total_pressure_deficit,
+    with_contribution,
 )
 from vortexwidgets.data_drop import DataDrop, data_drop
-from vortexwidgets.fitting.fit import Settings, settings_for
+from vortexwidgets.fitting.fit import Settings, fit_survey, settings_for
 from vortexwidgets.fitting.ranking import Ranking, rank_models
 from vortexwidgets.fitting.result import Loss, Uncertainties
 from vortexwidgets.fluids import Fluid, Site
@@ -43,6 +45,7 @@ from vortexwidgets.uncertainty import Contribution, Estimate
 
 if TYPE_CHECKING:
     from vortexwidgets.fitting.problem import Background
+    from vortexwidgets.fitting.result import Fit
     from vortexwidgets.models.model import VortexModel
 
 Named = TypeVar("Named", Consequence, CoreDrop)
@@ -151,10 +154,16 @@ class Appraisal:
             parts[-1] += f" (k = 1) = {self.pressure_constant:.2f} ρ v_peak²"
         low, high = self.envelope
         if math.isfinite(high):
-            number = sum(not row.rejected for row in self.models)
-            which = "the only model not rejected" if number == 1 else f"{number} models not rejected"
-            parts.append(f"{format_number(low, 'Pa')} to {format_number(high, 'Pa')} over {which}")
-        parts.append(f"{100 * self.share_beyond:.1f} % from beyond the survey")
+            kept = [row for row in self.models if not row.rejected]
+            if len(kept) == 1:
+                parts.append(f"only {' = '.join(kept[0].names)} is not rejected")
+            else:
+                span = f"{format_number(low, 'Pa')} to {format_number(high, 'Pa')}"
+                parts.append(f"{span} over {len(kept)} models not rejected")
+        if self.share_beyond > _UNDETERMINED_BEYOND:
+            parts.append(f"{100 * self.share_beyond:.0f} % of the whole drop lies beyond the survey and is left out")
+        else:
+            parts.append(f"{100 * self.share_beyond:.1f} % from beyond the survey")
         parts.append(self.reference)
         return "; ".join(parts) + "."
 
@@ -316,7 +325,7 @@ def appraise(
     supported = ranking.supported
     best = supported[0] if supported else ranking.best
     cautions = survey_cautions(screened, ranking)
-    answer = _answer(screened, ranking, fluid, site, cautions)
+    answer = _answer(screened, ranking, fluid, site, instrument, cautions)
     drops = named_drops(answer.drop, best.fit.vortex, wander=instrument.wander if instrument else 0.0)
     core = _core(screened, ranking, fluid, answer, drops)
     return Appraisal(
@@ -327,7 +336,7 @@ def appraise(
         settings=settings,
         model_keys=None if models is None else tuple(m if isinstance(m, str) else m.key for m in models),
         screening=screen(survey, centre=best.fit.centre, peak_radius=core.vortex.peak_radius),
-        models=_model_rows(ranking, fluid),
+        models=_model_rows(ranking, fluid, answer.reference_radius),
         criterion=ranking.criterion,
         core=core,
         core_pressure_drop=answer.drop,
@@ -336,10 +345,10 @@ def appraise(
         core_drops=drops if supported else (),
         envelope=answer.envelope,
         pressure_constant=answer.centred.value / (fluid.density.value * core.vortex.peak_swirl**2),
-        edge_circulation=circulation_at(best.fit, float(best.fit.radius.max())),
+        edge_circulation=_edge_circulation(screened, best.fit),
         share_beyond=answer.beyond,
         reference=answer.reference,
-        data_drop=data_drop(screened, best.fit, density=fluid.density, model_drop=answer.centred),
+        data_drop=_data_drop(screened, best.fit, fluid, answer, instrument),
         total_pressure_deficit=total_pressure_deficit(screened, best.fit, answer.centred, density=fluid.density),
         consequences=assess_all(core, fluid, site) if supported else (),
         agreements=tuple(check_agreement(row.model.key) for row in (supported or (best,))[:3]),
@@ -360,25 +369,33 @@ class _Answer:
     envelope: tuple[float, float]
     beyond: float
     reference: str
+    reference_radius: float | None
     ambient: Estimate | None
     pressure: Estimate | None
 
 
-def _answer(survey: Survey, ranking: Ranking, fluid: Fluid, site: Site, cautions: list[str]) -> _Answer:
+def _answer(
+    survey: Survey,
+    ranking: Ranking,
+    fluid: Fluid,
+    site: Site,
+    instrument: Instrument | None,
+    cautions: list[str],
+) -> _Answer:
     """Combine the models that are not rejected; what limits the answer goes to the cautions."""
     supported = ranking.supported
     best = supported[0] if supported else ranking.best
     last_radius = float(best.fit.radius.max())
-    beyond = share_beyond(best.fit.vortex, last_radius)
     ambient = site.axis_pressure(fluid)
     limit = site.reference_radius
+    beyond = share_beyond(best.fit.vortex, last_radius, reference_radius=limit)
     reference = reference_sentence(ambient, limit)
-    if limit is None and beyond > _UNDETERMINED_BEYOND:
+    if beyond > _UNDETERMINED_BEYOND:
         limit, ambient = last_radius, None
         reference = f"relative to the pressure at the last station, {format_number(last_radius, 'm')} from the axis"
         cautions.append(
             f"{100 * beyond:.0f} % of the drop would come from beyond the survey, so the drop is given relative to the "
-            "last station; measure farther out for the drop from the far field."
+            "last station; measure farther out for the whole drop."
         )
     elif beyond > _CAUTION_BEYOND:
         cautions.append(
@@ -387,6 +404,8 @@ def _answer(survey: Survey, ranking: Ranking, fluid: Fluid, site: Site, cautions
         )
     if supported:
         drop, envelope = combined_drop(supported, density=fluid.density, gain=survey.velocity_gain, beyond=limit)
+        for name, uncertainty in _of_the_instrument(survey, best.fit, fluid, instrument, limit):
+            drop = with_contribution(drop, name, uncertainty)
     else:
         drop, envelope = Estimate(math.nan, math.nan, "core_pressure_drop"), (math.nan, math.nan)
         cautions.insert(0, f"{NO_MODEL_FITS} The closest is {best.model.name}: {best.reason} The residuals are shown.")
@@ -402,7 +421,36 @@ def _answer(survey: Survey, ranking: Ranking, fluid: Fluid, site: Site, cautions
                 "and the core pressure is taken through the isentropic relation instead of the constant-density "
                 "drop."
             )
-    return _Answer(drop, centred, envelope, beyond, reference, ambient, pressure)
+    return _Answer(drop, centred, envelope, beyond, reference, limit, ambient, pressure)
+
+
+def _of_the_instrument(
+    survey: Survey, fit: Fit, fluid: Fluid, instrument: Instrument | None, limit: float | None
+) -> list[tuple[str, float]]:
+    """What the stated uncertainties of wander and probe width contribute: half the change of the drop over ±u."""
+    parts = []
+    for name in ("wander", "probe_width"):
+        stated = survey.facts.get(name)
+        if instrument is None or not isinstance(stated, Estimate) or stated.uncertainty == 0.0:
+            continue
+        if stated.value != getattr(instrument, name):
+            continue  # another value was given in its place
+        ends = []
+        for side in (-1.0, 1.0):
+            changed: dict[str, Any] = {name: max(stated.value + side * stated.uncertainty, 0.0)}
+            moved = fit_survey(
+                survey,
+                fit.model,
+                instrument=replace(instrument, **changed),
+                background=fit.background,
+                uncertainties=fit.uncertainties,
+                loss=fit.loss,
+                start={n: fit.value(n) for n in ("centre_x", "centre_y", "core_radius")},
+                on_failure="return",
+            )
+            ends.append(relative_to(moved.core_pressure_drop(fluid.density.value), moved.vortex, limit).value)
+        parts.append((name.replace("_", " "), 0.5 * abs(ends[1] - ends[0])))
+    return parts
 
 
 def _core(
@@ -411,9 +459,9 @@ def _core(
     supported = ranking.supported
     fit = (supported[0] if supported else ranking.best).fit
     if "circulation" in fit.names:
-        circulation = _with_common(fit.estimate("circulation"), survey)
+        circulation = _with_common(fit.estimate("circulation"), survey, gain=1.0, scale=1.0)
     else:
-        circulation = circulation_at(fit, float(fit.radius.max()))
+        circulation = _edge_circulation(survey, fit)
     return Core(
         vortex=fit.vortex,
         supported=tuple(row.fit.vortex for row in supported),
@@ -423,9 +471,9 @@ def _core(
         pressure=answer.pressure,
         envelope=answer.envelope,
         circulation=circulation,
-        core_radius=fit.estimate("core_radius"),
-        peak_swirl=_with_common(fit.estimate("peak_swirl"), survey),
-        peak_radius=fit.estimate("peak_radius"),
+        core_radius=_with_common(fit.estimate("core_radius"), survey, scale=1.0),
+        peak_swirl=_with_common(fit.estimate("peak_swirl"), survey, gain=1.0),
+        peak_radius=_with_common(fit.estimate("peak_radius"), survey, scale=1.0),
         density=fluid.density,
         missed_axis=may_have_missed(survey),
     )
@@ -442,12 +490,25 @@ def _rank(survey: Survey, models: Sequence[str | VortexModel] | None, settings: 
     )
 
 
-def _model_rows(ranking: Ranking, fluid: Fluid) -> tuple[ModelRow, ...]:
+def _data_drop(survey: Survey, fit: Fit, fluid: Fluid, answer: _Answer, instrument: Instrument | None) -> DataDrop:
+    """The data see the mean profile, so it is the drop of the mean profile that they are compared with."""
+    whole = fit.core_pressure_drop(fluid.density.value) if answer.reference_radius is not None else answer.centred
+    mean_profile = named_drops(whole, fit.vortex, wander=instrument.wander if instrument else 0.0)[2].estimate
+    averaged = instrument is not None and instrument.probe_width > 0.0
+    return data_drop(survey, fit, density=fluid.density, model_drop=None if averaged else mean_profile)
+
+
+def _edge_circulation(survey: Survey, fit: Fit) -> Estimate:
+    edge = circulation_at(fit, float(fit.radius.max()))
+    return _with_common(edge, survey, gain=1.0, scale=1.0)
+
+
+def _model_rows(ranking: Ranking, fluid: Fluid, reference_radius: float | None) -> tuple[ModelRow, ...]:
     rows = []
     for row in ranking:
         fit = row.fit
         shape = [fit.value(parameter.name) for parameter in fit.model.shape]
-        drop = fit.core_pressure_drop(fluid.density.value)
+        drop = relative_to(fit.core_pressure_drop(fluid.density.value), fit.vortex, reference_radius)
         rows.append(
             ModelRow(
                 key=row.model.key,
@@ -472,13 +533,19 @@ def _model_rows(ranking: Ranking, fluid: Fluid) -> tuple[ModelRow, ...]:
     return tuple(rows)
 
 
-def _with_common(estimate: Estimate, survey: Survey) -> Estimate:
-    """Add the velocity gain, which does not average out."""
-    common = survey.velocity_gain.uncertainty * abs(estimate.value)
-    if common == 0.0 or not math.isfinite(estimate.uncertainty):
+def _with_common(estimate: Estimate, survey: Survey, *, gain: float = 0.0, scale: float = 0.0) -> Estimate:
+    """Add velocity gain and position scale, each to the power at which it enters; neither averages out."""
+    if not estimate.is_determined:
         return estimate
-    budget = (Contribution("scatter of the samples", estimate.uncertainty), Contribution("velocity gain", common))
-    return Estimate(estimate.value, math.hypot(estimate.uncertainty, common), estimate.quantity, budget=budget)
+    for name, power, common in (
+        ("velocity gain", gain, survey.velocity_gain.uncertainty),
+        ("position scale", scale, survey.position_scale.uncertainty),
+    ):
+        if not estimate.budget:
+            own = (Contribution("scatter of the samples", estimate.uncertainty),)
+            estimate = replace(estimate, budget=own)
+        estimate = with_contribution(estimate, name, power * common * abs(estimate.value))
+    return estimate
 
 
 def _versions() -> dict[str, str]:

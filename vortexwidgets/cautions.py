@@ -35,8 +35,8 @@ def survey_cautions(survey: Survey, ranking: Ranking) -> list[str]:
             "is a lower "
             "bound. Measure the component along the line, or state the miss distance."
         )
-    for text in dict.fromkeys(best.fit._open.values()):
-        cautions.append(text)
+    for row in ranking.supported or (best,):
+        cautions += [f"{row.model.name}: {text}" for text in dict.fromkeys(row.fit._open.values())]
     if survey.geometry == "traverse" and best.fit.background == "none":
         try:
             wider = fit_survey(

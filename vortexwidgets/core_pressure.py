@@ -24,6 +24,7 @@ INSTANTANEOUS = "instantaneous vortex"
 TAP = "mean pressure at a fixed point"
 MEAN_PROFILE = "mean profile"
 
+_CLOSED = 0.99  # weight of the models with a determined drop from which the others only widen the envelope
 _DRAWS = 20_000
 _SEED = 20_260_101  # fixed: the same survey gives the same record
 
@@ -59,7 +60,7 @@ class Core:
 # The vortex alone ---------------------------------------------------------------------------------------------------
 
 
-def share_beyond(vortex: Vortex, radius: float) -> float:
+def share_beyond(vortex: Vortex, radius: float, *, reference_radius: float | None = None) -> float:
     """Share of the core pressure drop that comes from beyond a radius.
 
     Parameters
@@ -68,6 +69,8 @@ def share_beyond(vortex: Vortex, radius: float) -> float:
         With a finite core pressure drop.
     radius : float
         Distance from the axis. [m]
+    reference_radius : float, optional
+        Where the drop is taken from, in place of the far field. [m]
 
     Returns
     -------
@@ -82,7 +85,29 @@ def share_beyond(vortex: Vortex, radius: float) -> float:
     >>> share_beyond(Vortex("rankine", circulation=1.0, core_radius=0.01), 0.01)
     0.5
     """
-    return float(vortex.pressure_drop(radius, density=1.0)) / float(vortex.pressure_drop(0.0, density=1.0))
+    outside, whole = (float(vortex.pressure_drop(r, density=1.0)) for r in (radius, 0.0))
+    if reference_radius is not None:
+        if reference_radius <= radius:
+            return 0.0
+        far = float(vortex.pressure_drop(reference_radius, density=1.0))
+        outside, whole = outside - far, whole - far
+    return outside / whole
+
+
+def relative_to(drop: Estimate, vortex: Vortex, reference_radius: float | None) -> Estimate:
+    """A core pressure drop from the far field, taken from the pressure at a radius instead. [Pa]"""
+    return drop if reference_radius is None else _scaled(drop, 1.0 - share_beyond(vortex, reference_radius))
+
+
+def with_contribution(drop: Estimate, name: str, uncertainty: float) -> Estimate:
+    """An estimate with one more contribution; its distribution widens in proportion."""
+    if not drop.is_determined or uncertainty == 0.0:
+        return drop
+    total = math.hypot(drop.uncertainty, uncertainty)
+    ratio = total / drop.uncertainty if drop.uncertainty > 0.0 else 1.0
+    quantiles = None if drop.quantiles is None else tuple(drop.value + ratio * (q - drop.value) for q in drop.quantiles)
+    budget = (*drop.budget, Contribution(name, uncertainty))
+    return Estimate(drop.value, total, drop.quantity, budget=budget, quantiles=quantiles)
 
 
 def mean_swirl(vortex: Vortex, radius: npt.ArrayLike, *, wander: float) -> FloatArray:
@@ -200,19 +225,19 @@ def combined_drop(
         lowest and highest single-model drop.
     """
     drops = [row.fit.core_pressure_drop(density.value) for row in rows]
-    if beyond is not None:
-        drops = [
-            _scaled(drop, 1.0 - share_beyond(row.fit.vortex, beyond)) for drop, row in zip(drops, rows, strict=True)
-        ]
-    if not all(drop.is_determined for drop in drops):
-        # One profile that leaves the core open leaves the answer open: the shallowest of all lower limits stands.
+    drops = [relative_to(drop, row.fit.vortex, beyond) for drop, row in zip(drops, rows, strict=True)]
+    closed = [(row, drop) for row, drop in zip(rows, drops, strict=True) if drop.is_determined]
+    if len(closed) < len(rows) and sum(row.weight for row, _ in closed) < _CLOSED * sum(row.weight for row in rows):
+        # Profiles that leave the core open leave the answer open: the shallowest of all lower limits stands.
         lowest = max(min(drop.interval(0.95)[0] for drop in drops), 0.0)
         relative = 1.96 * math.hypot(2.0 * gain.uncertainty, density.uncertainty / density.value)
         lowest *= max(1.0 - relative, 0.0)
         return Estimate(lowest, math.nan, "core_pressure_drop", bound="lower"), (lowest, math.inf)
+    open_ended = len(closed) < len(rows)
+    drops = [drop for _, drop in closed]
     values = np.array([drop.value for drop in drops])
     own = np.array([drop.uncertainty for drop in drops])
-    weights = np.array([row.weight for row in rows])
+    weights = np.array([row.weight for row, _ in closed])
     weights = weights / weights.sum()
     mean = float(weights @ values)
     budget = (
@@ -230,7 +255,7 @@ def combined_drop(
     total = math.sqrt(sum(part.uncertainty**2 for part in budget))
     quantiles = from_draws(draws, "core_pressure_drop").quantiles
     estimate = Estimate(mean, total, "core_pressure_drop", budget=budget, quantiles=quantiles)
-    return estimate, (float(values.min()), float(values.max()))
+    return estimate, (float(values.min()), math.inf if open_ended else float(values.max()))
 
 
 def _spread(estimate: Estimate, number: int, generator: np.random.Generator) -> FloatArray:
@@ -335,7 +360,6 @@ def circulation_at(fit: Fit, radius: float) -> Estimate:
 
     vortex = fit.vortex
     value = float(vortex.enclosed_circulation(radius))
-    names = [name for name in fit.names if name == "core_radius" or (hasattr(vortex, name) and name != "centre")]
     names = [name for name in fit.names if name in (fit._problem.strength_name, "core_radius", *vortex.shape)]
     gradient = np.zeros(len(fit.names))
     for name in names:
@@ -352,32 +376,44 @@ def circulation_at(fit: Fit, radius: float) -> Estimate:
 def total_pressure_deficit(survey: Survey, fit: Fit, drop: Estimate, *, density: Estimate) -> Estimate | None:
     """Total pressure far away less total pressure on the axis, Δp + ½ρ(W∞² - W0²); None without an axial velocity. [Pa]
 
-    W0 is the mean over the samples within half a peak radius (the nearest three where there are fewer), W∞ that beyond
-    three peak radii. The static drop itself does not depend on the axial velocity.
+    W0 is where a parabola in r² through the samples within 1.2 peak radii, or the nearest nine, meets the axis; W∞ the mean
+    beyond three peak radii. The static drop itself does not depend on the axial velocity.
     """
     chosen = survey.axial
     if not chosen.any() or not math.isfinite(drop.value):
         return None
     radius = np.hypot(survey.x[chosen] - fit.centre[0], survey.y[chosen] - fit.centre[1])
     velocity = survey.velocity[chosen]
+    own = None if survey.uncertainty is None else survey.uncertainty[chosen]
     peak = fit.vortex.peak_radius
-    near = radius <= 0.5 * peak
-    if not near.any():
-        near = radius <= np.sort(radius)[min(2, len(radius) - 1)]
     far = radius >= 3.0 * peak
     if not far.any():
         far = radius >= np.quantile(radius, 0.8)
-    inner, outer = float(velocity[near].mean()), float(velocity[far].mean())
-    own = None if survey.uncertainty is None else survey.uncertainty[chosen]
-    u_inner, u_outer = (_mean_uncertainty(velocity[part], None if own is None else own[part]) for part in (near, far))
+    near = radius <= max(1.2 * peak, float(np.sort(radius)[min(8, len(radius) - 1)]))
+    inner, u_inner = _on_axis(radius[near] / peak, velocity[near], None if own is None else own[near])
+    outer, u_outer = _mean(velocity[far], None if own is None else own[far])
     change = 0.5 * density.value * (outer**2 - inner**2)
     u_change = density.value * math.hypot(outer * u_outer, inner * u_inner)
     budget = (Contribution("static core pressure drop", drop.uncertainty), Contribution("axial velocity", u_change))
     return Estimate(drop.value + change, math.hypot(drop.uncertainty, u_change), "pressure_drop", budget=budget)
 
 
-def _mean_uncertainty(values: FloatArray, own: FloatArray | None) -> float:
-    """Standard uncertainty of a mean: from the scatter, but no less than the samples state."""
+def _on_axis(x: FloatArray, values: FloatArray, own: FloatArray | None) -> tuple[float, float]:
+    """Value on the axis of a smooth axisymmetric profile and its standard uncertainty."""
+    if len(values) < 4:
+        return _mean(values, own)
+    terms = 3 if len(values) >= 12 else 2
+    columns = np.vander(x**2, terms, increasing=True)
+    level, *_ = np.linalg.lstsq(columns, values, rcond=None)
+    rest = values - columns @ level
+    variance = float(rest @ rest) / (len(values) - terms)
+    if own is not None:
+        variance = max(variance, float(np.mean(own**2)))
+    return float(level[0]), math.sqrt(variance * float(np.linalg.pinv(columns.T @ columns)[0, 0]))
+
+
+def _mean(values: FloatArray, own: FloatArray | None) -> tuple[float, float]:
+    """Mean and its standard uncertainty: from the scatter, but no less than the samples state."""
     scatter = float(values.std(ddof=1)) / math.sqrt(values.size) if values.size > 1 else 0.0
     stated = 0.0 if own is None else float(np.sqrt(np.sum(own**2))) / values.size
-    return max(scatter, stated)
+    return float(values.mean()), max(scatter, stated)

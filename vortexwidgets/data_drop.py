@@ -29,7 +29,7 @@ class DataDrop:
     sentences: tuple[str, ...]
 
 
-def data_drop(survey: Survey, fit: Fit, *, density: Estimate, model_drop: Estimate) -> DataDrop:
+def data_drop(survey: Survey, fit: Fit, *, density: Estimate, model_drop: Estimate | None) -> DataDrop:
     """Core pressure drop straight from the samples, as a cross-check on the models. [Pa]
 
     Parameters
@@ -40,8 +40,8 @@ def data_drop(survey: Survey, fit: Fit, *, density: Estimate, model_drop: Estima
         Gives the centre and the background, nothing else.
     density : Estimate
         [kg/m³]
-    model_drop : Estimate
-        What the models say, for the comparison. [Pa]
+    model_drop : Estimate or None
+        What the models say of the mean profile, for the comparison; None where the probe averaged. [Pa]
 
     Returns
     -------
@@ -91,7 +91,7 @@ def data_drop(survey: Survey, fit: Fit, *, density: Estimate, model_drop: Estima
     )
 
 
-def _comparison(data: Estimate, cap: float, model: Estimate) -> list[str]:
+def _comparison(data: Estimate, cap: float, model: Estimate | None) -> list[str]:
     sentences = []
     share = cap / data.value if data.value > 0.0 else math.nan
     if share > 0.3:
@@ -99,7 +99,9 @@ def _comparison(data: Estimate, cap: float, model: Estimate) -> list[str]:
             f"{100 * share:.0f} % of the data-only drop is the cap towards the axis, which no sample measured; it is "
             "a least value."
         )
-    if model.bound is None and math.isfinite(model.uncertainty):
+    if model is None:
+        sentences.append("The probe averaged over its width, so the data-only drop is not compared with the models.")
+    elif model.is_determined:
         off = data.value - model.value
         doubt = math.hypot(data.uncertainty, model.uncertainty)
         if abs(off) > max(3.0 * doubt, 0.08 * model.value):

@@ -200,6 +200,15 @@ def test_a_stated_miss_distance_enters_with_its_uncertainty():
     assert doubtful.uncertainty("core_radius") > 1.5 * fit.uncertainty("core_radius")
 
 
+def test_a_miss_distance_may_be_nothing():
+    """Where the axis may lie on either side of the line the smallest distance is zero."""
+    vortex = dataclasses.replace(truth("lamb-oseen"), centre=(0.002, 0.0001))
+    fit = vx.fit_survey(line(vortex, noise=0.3, uncertainty=0.3), "lamb-oseen")
+    low, high = fit.interval("centre_y")
+    assert low < 0.0 < high
+    assert fit.interval("miss_distance") == (0.0, max(-low, high))
+
+
 def test_an_unnoticed_miss_is_a_shallower_vortex():
     """Lamb-Oseen missed by half a core radius comes out 16 % too shallow (derived, quadrature at 50 digits)."""
     vortex = vx.Vortex("lamb-oseen", circulation=2 * np.pi, core_radius=1.0, centre=(0.0, 0.5))

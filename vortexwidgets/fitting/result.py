@@ -283,8 +283,8 @@ class Fit:
         if name == "miss_distance":
             return self.uncertainty("centre_y")
         if name in ("peak_radius", "peak_swirl"):
-            value = self.value(name)
-            return value * self._log_uncertainty(name) if value >= 0.0 else -value * self._log_uncertainty(name)
+            value = abs(self.value(name))
+            return self._linear_or_half(value * self._log_uncertainty(name), *self.interval(name))
         self.value(name)
         return 0.0
 
@@ -310,8 +310,8 @@ class Fit:
             low, high = self.interval("core_radius", level)
             return low * at, high * at
         if name == "miss_distance":
-            low, high = sorted(abs(edge) for edge in self.interval("centre_y", level))
-            return low, high
+            low, high = self.interval("centre_y", level)
+            return 0.0 if low < 0.0 < high else min(abs(low), abs(high)), max(abs(low), abs(high))
         if name not in self.names and name != "peak_swirl":
             value = self.value(name)
             return value, value
@@ -351,10 +351,10 @@ class Fit:
         if not (low > 0.0 and math.isfinite(high)):
             return Estimate(density * max(low, 0.0), math.nan, "core_pressure_drop", bound="lower")
         value = density * self._swirl_scale**2 * constant
-        relative = self._log_uncertainty("core_pressure_drop")
+        linear = value * self._log_uncertainty("core_pressure_drop")
         return Estimate(
             value,
-            value * relative,
+            self._linear_or_half(linear, density * low, density * high),
             "core_pressure_drop",
             quantiles=two_sided_quantiles(value, density * low, density * high),
         )
@@ -461,6 +461,11 @@ class Fit:
         used = gradient != 0.0
         part = self.covariance[np.ix_(used, used)]
         return math.sqrt(max(float(gradient[used] @ part @ gradient[used]), 0.0))
+
+    @staticmethod
+    def _linear_or_half(linear: float, low: float, high: float) -> float:
+        """Linear uncertainty, or half the 95 % interval over 1.96 where a shape that is open leaves none."""
+        return linear if math.isfinite(linear) else (high - low) / (2.0 * 1.959963984540054)
 
     def _measure(self, name: str) -> Any:
         if name == "core_pressure_drop":
