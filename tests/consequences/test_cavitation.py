@@ -1,5 +1,6 @@
 """Cavitation: numbers, verdicts at and around the criterion, what is said when something is missing."""
 
+import dataclasses
 import math
 
 import pytest
@@ -86,7 +87,50 @@ def test_a_lower_bound_of_the_drop_leaves_it_open_unless_it_already_cavitates():
     assert found.estimate.value == pytest.approx(-1e3 + 1.95996 * 400.0, abs=0.1)
     found = assessed(None, site=Site(ambient_pressure=(CRITICAL - 700.0, 400.0)), bound="lower")
     assert (found.verdict, found.probability) == ("not decided", None)
-    assert any("measure nearer to the axis" in note for note in found.notes)
+    assert any("leaves the core open" in note and "in its size or its shape" in note for note in found.notes)
+
+
+OPEN_SHAPE, OPEN_SIZE, MISSED = "more samples in and around the core", "measure nearer to the axis", "second component"
+
+
+@pytest.mark.parametrize(
+    ("core_radius", "missed", "highest", "said"),
+    [
+        (Estimate(0.01, 1e-4, "core_radius"), False, math.inf, [OPEN_SHAPE]),
+        (Estimate(0.02, math.nan, "core_radius", bound="upper"), False, math.inf, [OPEN_SIZE]),
+        (Estimate(0.01, 1e-4, "core_radius"), True, 100e3, [MISSED]),
+        (Estimate(0.01, 1e-4, "core_radius"), True, math.inf, [MISSED, OPEN_SHAPE]),
+        (Estimate(0.02, math.nan, "core_radius", bound="upper"), True, math.inf, [MISSED, OPEN_SIZE]),
+    ],
+)
+@pytest.mark.parametrize("reference", [True, False])
+def test_a_bound_says_what_leaves_the_drop_open_and_nothing_else(core_radius, missed, highest, said, reference):
+    """A core whose shape is open may be well surveyed, so only an open size asks for stations nearer to the axis."""
+    ambient = Estimate(150e3, 0.0, "ambient_pressure") if reference else None
+    core = dataclasses.replace(
+        core_of(VORTEX, LIQUID, ambient=ambient, bound="lower", missed_axis=missed),
+        core_radius=core_radius,
+        envelope=(90e3, highest),
+    )
+    for site in (Site(), Site(ambient_pressure=150e3)):  # without the core's own, the last station is the reference
+        notes = " ".join(cavitation.assess(core, LIQUID, site).notes)
+        assert [words for words in (MISSED, OPEN_SHAPE, OPEN_SIZE) if words in notes] == said
+
+
+def test_a_criterion_inside_the_interval_is_said_first():
+    assert "inside the 95 % interval" in assessed(CRITICAL, relative=0.01).notes[0]
+    assert not any("inside the 95 % interval" in note for note in assessed(2.0 * CRITICAL, relative=0.01).notes)
+
+
+def test_a_submerged_vortex_is_told_that_it_makes_no_dip():
+    found = assessed(None, site=Site(ambient_pressure=CRITICAL, orientation="submerged"))
+    assert any("draws air only if it connects with the surface" in note for note in found.notes)
+    assert not any("draws air" in note for note in assessed(CRITICAL).notes)
+
+
+def test_an_upper_limit_of_the_pressure_does_not_rule_gas_out():
+    found = assessed(None, site=Site(ambient_pressure=CRITICAL + 200e3, gas_saturation=1.0), bound="lower")
+    assert any("may lie below the 101.3 kPa" in note for note in found.notes)
 
 
 def test_a_missed_axis_is_named():

@@ -69,15 +69,15 @@ def test_the_density_cancels_and_the_rest_of_the_budget_stays():
     assert [part.name for part in found.estimate.budget] == ["scatter"]
 
 
-@pytest.mark.parametrize(
-    ("orientation", "words"),
-    [(None, "give Site(orientation='surface')"), ("submerged", "draws air only if it connects with the surface")],
-)
-def test_another_answer_where_the_vortex_does_not_stand_to_the_surface(orientation, words):
-    found = assessed(orientation=orientation, submergence=0.01)
+def test_how_the_vortex_stands_to_the_surface_is_asked_for():
+    found = assessed(orientation=None, submergence=0.01)
     assert (found.verdict, found.probability) == ("not decided", None)
     assert math.isnan(found.estimate.value)
-    assert words in found.notes[0]
+    assert "give Site(orientation='surface')" in found.notes[0]
+
+
+def test_a_submerged_vortex_has_no_dip():
+    assert assessed(orientation="submerged", submergence=0.01) is None
 
 
 def test_without_the_depth_of_the_intake_it_asks_for_it():

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any, Literal
 import numpy as np
 
 from vortexwidgets.consequences.consequence import (
+    INSIDE_INTERVAL,
     LEVEL,
     NOT_DECIDED,
     Consequence,
@@ -47,6 +48,10 @@ _CAUTION = (
     "follow: have a machine that people depend on judged by whoever is licensed to, under the rules that hold there."
 )
 
+_SUBMERGED = (
+    "A submerged or horizontal vortex does not dip the surface by Δp/(ρg), so no dip is given; it draws air only if it "
+    "connects with the surface."
+)
 _MARGIN = "pressure"
 
 
@@ -220,6 +225,8 @@ def assess(core: Core, fluid: Fluid, site: Site) -> Consequence | None:
     if ambient is not None:
         margin = _margin(ambient, drop, vapour, tension)
         verdict, probability = decide(margin, 0.0, met_when="at or below")
+        if verdict == NOT_DECIDED and probability is not None:
+            notes.insert(0, INSIDE_INTERVAL)
     elif not math.isnan(drop.value):
         details.append(("Pressure far away at which it would cavitate", _critical_ambient(drop, critical)))
     details += _numbers(drop, ambient, vapour, fluid, site)
@@ -229,6 +236,8 @@ def assess(core: Core, fluid: Fluid, site: Site) -> Consequence | None:
     notes += _inception_notes(site)
     if tension.value == 0.0:
         notes.append("No tensile strength is given, so the water is taken to bear none; that is the cautious side.")
+    if site.orientation == "submerged":
+        notes.append(_SUBMERGED)
     return Consequence(
         name=NAME,
         question=_QUESTION,
@@ -264,15 +273,34 @@ def _pressures(core: Core, fluid: Fluid, site: Site) -> tuple[Estimate, Estimate
             "The absolute pressure on the axis is not known: give Site(ambient_pressure=...) at the elevation of "
             "the axis, or surface_pressure and depth."
         )
-    elif drop.bound == "lower":
-        why = "The line may have missed the axis" if core.missed_axis else "The survey does not resolve the core"
-        notes.append(
-            f"{why}, so the drop is a lower bound and the margin an upper limit; "
-            + ("give the miss distance or the second component." if core.missed_axis else "measure nearer to the axis.")
-        )
+    if core.drop.bound == "lower":
+        what = "the drop is a lower bound" + ("" if ambient is None else " and the margin an upper limit")
+        notes += [f"{why}, so {what}; {remedy}." for why, remedy in _why_a_bound(core)]
     if ambient is not None:
         notes.append("The drop is that of the instantaneous vortex, not what a tap reads or a mean profile gives.")
     return drop, ambient, notes
+
+
+def _why_a_bound(core: Core) -> list[tuple[str, str]]:
+    """What leaves the drop open, as far as the core says, each with what would close it."""
+    reasons = []
+    if core.missed_axis:
+        reasons.append(("The line may have missed the axis", "give the miss distance or the second component"))
+    if core.core_radius.bound == "upper":
+        reasons.append(
+            (
+                "The survey gives only an upper limit of the core's size in the best profile",
+                "measure nearer to the axis",
+            )
+        )
+    elif not reasons or math.isinf(core.envelope[1]):
+        reasons.append(
+            (
+                "At least one profile that the data do not reject leaves the core open, in its size or its shape",
+                "take more samples in and around the core, or more precise ones",
+            )
+        )
+    return reasons
 
 
 def _margin(ambient: Estimate, drop: Estimate, vapour: Estimate, tension: Estimate) -> Estimate:
@@ -390,10 +418,11 @@ def _gas(core: Core, vapour: Estimate, site: Site) -> tuple[list[tuple[str, Esti
     if core.pressure is None or math.isnan(core.pressure.value):
         return [(name, release)], []
     below = core.pressure.value < release.value
+    lies = "lies below" if below else "may lie below" if core.pressure.bound == "upper" else "lies above"
     note = (
-        f"At {100.0 * site.gas_saturation:.0f} % of saturation the axis lies "
-        f"{'below' if below else 'above'} the {format_number(release.value, 'Pa')} at which gas comes out of solution"
-        + ("; a gas core can show before vapour does (gaseous cavitation)." if below else ".")
+        f"At {100.0 * site.gas_saturation:.0f} % of saturation the axis {lies} the "
+        f"{format_number(release.value, 'Pa')} at which gas comes out of solution"
+        + ("." if lies == "lies above" else "; a gas core can show before vapour does (gaseous cavitation).")
     )
     return [(name, release)], [note]
 

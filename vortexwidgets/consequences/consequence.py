@@ -22,6 +22,9 @@ MET: Verdict = "met"
 NOT_MET: Verdict = "not met"
 NOT_DECIDED: Verdict = "not decided"
 LEVEL = 0.95
+INSIDE_INTERVAL = (
+    "The criterion lies inside the 95 % interval, so it is not decided; the budget says which input to improve."
+)
 
 
 @dataclass(frozen=True)

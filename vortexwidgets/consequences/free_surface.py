@@ -63,10 +63,6 @@ _NEEDS_ORIENTATION = (
     "It is not known how the vortex stands to the surface: give Site(orientation='surface') for a vertical vortex that "
     "reaches it, or 'submerged'."
 )
-_SUBMERGED = (
-    "A submerged or horizontal vortex does not dip the surface by Δp/(ρg). It draws air only if it connects with the "
-    "surface; what its low pressure does is the question of cavitation and of gas that comes out of solution."
-)
 
 
 # The vortex alone ----------------------------------------------------------------------------------------------------
@@ -327,14 +323,16 @@ def _integrated(vortex: Vortex, radius: FloatArray, *, power: int) -> FloatArray
 
 
 def assess(core: Core, fluid: Fluid, site: Site) -> Consequence | None:
-    """Judge dip and air-drawing; None in a gas."""
-    if fluid.is_gas or fluid.heat_capacity_ratio is not None or site.orientation == "air":
+    """Judge dip and air-drawing; None in a gas, and for a submerged vortex, which does not dip the surface by Δp/(ρg).
+
+    A submerged vortex draws air only if it connects with the surface; what its low pressure does is the question of
+    cavitation, which says so.
+    """
+    if fluid.is_gas or fluid.heat_capacity_ratio is not None or site.orientation in ("air", "submerged"):
         return None
     if math.isnan(core.drop.value):
         return _open("No core pressure drop is known, because no model fits the survey.")
     depth = scaled(core.drop, 1.0 / (core.density.value * site.gravity), "dip_depth", without="density")
-    if site.orientation == "submerged":
-        return _open(_SUBMERGED)
     if site.orientation is None:
         return _open(_NEEDS_ORIENTATION, (("Dip if it is vertical and reaches the surface", depth),))
     notes: list[str] = []

@@ -11,7 +11,9 @@ import numpy as np
 import numpy.typing as npt
 
 from vortexwidgets.consequences.consequence import (
+    INSIDE_INTERVAL,
     LEVEL,
+    NOT_DECIDED,
     Consequence,
     Criterion,
     chance_text,
@@ -382,6 +384,8 @@ def assess(core: Core, fluid: Fluid, site: Site) -> Consequence | None:
     notes: list[str] = []
     fall = _fall(core, fluid, site, notes)
     verdict, probability = decide(fall, _MILDEST.pressure_drop, met_when="at or above")
+    if verdict == NOT_DECIDED and probability is not None:
+        notes.insert(0, INSIDE_INTERVAL)
     details: list[tuple[str, Estimate]] = []
     if not math.isnan(core.drop.value):
         details.append(("Drop at constant density", core.drop))
