@@ -376,8 +376,8 @@ def circulation_at(fit: Fit, radius: float) -> Estimate:
 def total_pressure_deficit(survey: Survey, fit: Fit, drop: Estimate, *, density: Estimate) -> Estimate | None:
     """Total pressure far away less total pressure on the axis, Δp + ½ρ(W∞² - W0²); None without an axial velocity. [Pa]
 
-    W0 is where a parabola in r² through the samples within 1.2 peak radii, or the nearest nine, meets the axis; W∞ the mean
-    beyond three peak radii. The static drop itself does not depend on the axial velocity.
+    W0 is where a parabola in r² through the samples within 1.2 peak radii, or the nearest nine, meets the axis; W∞ the
+    mean beyond three peak radii. The static drop itself does not depend on the axial velocity.
     """
     chosen = survey.axial
     if not chosen.any() or not math.isfinite(drop.value):
