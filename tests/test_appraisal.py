@@ -74,6 +74,32 @@ def test_parts_are_found_by_name(appraisal):
         appraisal.consequence("Fire")
 
 
+def test_the_summary_gives_details_cautions_and_why_a_verdict_is_open(appraisal):
+    printed = appraisal.summary()
+    lines = [line.strip() for line in printed.splitlines()]
+    for item in appraisal.consequences:
+        assert item.caution in lines
+        for name, estimate in item.details:
+            assert f"{name}: {estimate}" in lines
+    assert any(line.startswith("Cavitation number σ (free stream): ") for line in lines)
+    assert "Total pressure deficit" not in printed
+    item = dataclasses.replace(
+        appraisal.consequences[0], verdict="not decided", probability=None, notes=("Give a speed.", "Another note.")
+    )
+    opened = dataclasses.replace(
+        appraisal,
+        consequences=(item,),
+        total_pressure_deficit=vx.Estimate(43e3, 1e3, "pressure_drop"),
+    ).summary()
+    assert "\n    Give a speed.\n" in opened
+    assert "Another note." not in opened
+    assert "Total pressure deficit on the axis: 43.0 ± 1.0 kPa (static drop plus axial velocity)\n" in opened
+
+
+def test_a_submerged_vortex_is_not_judged_on_a_dip(appraisal):
+    assert [item.name for item in appraisal.consequences] == ["Cavitation"]
+
+
 def test_wander_makes_three_drops_of_one():
     """The mean profile of a wandering Lamb-Oseen vortex is one with core_radius² + 2σ² (Devenport et al. 1996).
 

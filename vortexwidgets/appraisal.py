@@ -15,7 +15,7 @@ from typing import TYPE_CHECKING, Any, TypeVar
 from vortexwidgets.cautions import assumptions_of, may_have_missed, reference_sentence, survey_cautions
 from vortexwidgets.circumstances import fluid_of, instrument_of, site_of
 from vortexwidgets.consequences import assess_all
-from vortexwidgets.consequences.consequence import Consequence, Criterion, chance_text
+from vortexwidgets.consequences.consequence import NOT_DECIDED, Consequence, Criterion, chance_text
 from vortexwidgets.core_pressure import (
     Core,
     CoreDrop,
@@ -40,7 +40,7 @@ from vortexwidgets.record import saving
 from vortexwidgets.survey.instrument import Instrument
 from vortexwidgets.survey.samples import DroppedRow, Provenance
 from vortexwidgets.survey.screening import Screening, screen
-from vortexwidgets.survey.survey import Survey
+from vortexwidgets.survey.survey import Survey, require_survey
 from vortexwidgets.uncertainty import Contribution, Estimate
 
 if TYPE_CHECKING:
@@ -194,10 +194,16 @@ class Appraisal:
         )
         lines += ["", "Core pressure: " + self._pressure_line()]
         lines += [f"  {drop.name}: {drop.estimate}" for drop in self.core_drops]
+        if self.total_pressure_deficit is not None:
+            deficit = format_estimate(self.total_pressure_deficit)
+            lines.append(f"  Total pressure deficit on the axis: {deficit} (static drop plus axial velocity)")
         lines += ["", "Consequences:"]
         for item in self.consequences:
             chance = "" if item.probability is None else f" (probability {chance_text(item.probability)})"
             lines.append(f"  {item.name}: {item.estimate}; {item.criterion.text} {item.verdict}{chance}.")
+            lines += [f"    {name}: {estimate}" for name, estimate in item.details]
+            if item.verdict == NOT_DECIDED:
+                lines += [f"    {note}" for note in item.notes[:1]]
             lines.append(f"    {item.caution}")
         for title, sentences in (("Assumed", self.assumptions), ("Cautions", self.cautions)):
             if sentences:
@@ -313,6 +319,8 @@ def appraise(
     ValueError
         If facts contradict each other or lie outside a fluid's range.
     """
+    require_survey(survey)
+    models = [models] if isinstance(models, str) else models
     assumptions: list[str] = []
     fluid = fluid if fluid is not None else fluid_of(survey, assumptions)
     site = site if site is not None else site_of(survey)

@@ -365,7 +365,7 @@ def assess(core: Core, fluid: Fluid, site: Site) -> Consequence | None:
         source=_SOURCE,
         caution=_CAUTION,
         details=(*details, *more),
-        notes=(*notes, *sentences),
+        notes=(*sentences, *notes),
         curves=_curves(core, depth, (low, high), site),
     )
 
