@@ -500,3 +500,20 @@ def test_many_dropped_rows_with_one_reason_take_one_line(appraisal):
     assert len(text["dropped"]) == 1
     assert text["dropped"][0][0] == 390
     assert len(text["set_aside"]) == 1
+
+
+def test_a_record_that_is_not_there_is_said_in_one_sentence(tmp_path):
+    with pytest.raises(
+        FileNotFoundError, match=r"nope\.json cannot be read \(no such file.*; give the path of a record"
+    ):
+        load_appraisal(tmp_path / "nope.json")
+
+
+def test_numbers_of_a_table_have_one_notation(appraisal):
+    said = record_page.content(appraisal)
+    for table in said["budgets"]:
+        tails = {value.partition(".")[2] for _, value, _ in table["rows"]}
+        assert len({(len(tail.split()[0]), tail.split()[-1]) for tail in tails}) == 1  # decimals and unit
+    text = record.page(appraisal)
+    numbers = "".join(re.findall(r"<td[^>]*>[^<]*</td>", text.replace(appraisal.survey.provenance.sha256, "")))
+    assert not re.search(r"\d[eE][-+]?\d", numbers)

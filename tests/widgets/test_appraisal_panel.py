@@ -1,3 +1,4 @@
+import html
 import json
 
 import numpy as np
@@ -57,7 +58,11 @@ def test_the_sections_show_the_appraisal(appraised):
     assert appraised.appraisal.answer.split(";")[0] in appraised.pages["answer"].value
     assert "Lamb-Oseen" in appraised.pages["models"].value
     assert "core pressure, absolute" in appraised.pages["core"].value
-    assert "vx-consequence" in appraised.pages["consequences"].value
+    consequences = appraised.pages["consequences"].value
+    assert "vx-consequence" in consequences
+    for item in appraised.appraisal.consequences:
+        for name, value in item.details:
+            assert f"<td>{html.escape(name)}</td><td>{html.escape(str(value))}</td>" in consequences
 
 
 def test_the_vortex_by_hand_begins_as_the_best_fit_and_moves_the_plot(appraised):

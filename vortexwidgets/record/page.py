@@ -17,6 +17,7 @@ from vortexwidgets.record.texts import (
     in_unit_of,
     interval_text,
     number_text,
+    p_value_text,
     probability,
     shown,
     value_rows,
@@ -173,7 +174,7 @@ def model_row(row: Any) -> dict[str, Any]:
         "names": " = ".join(row.names),
         "aicc": number_text(row.aicc, digits=1),
         "weight": percent(row.weight),
-        "p": format_number(row.p_value, "", 2),
+        "p": p_value_text(row.p_value),
         "rejected": row.rejected,
         "verdict": "rejected" if row.rejected else "not rejected",
         "reason": row.reason,
@@ -314,7 +315,12 @@ def derivation_steps(appraisal: Any) -> dict[str, Any]:
 def agreement_table(agreement: Any) -> dict[str, Any]:
     """Symbolic against numeric, for one model."""
     rows = [
-        (words(row.quantity), row.compared_with, format_number(row.worst, "", 2), f"x = {row.at:.3g}")
+        (
+            words(row.quantity),
+            row.compared_with,
+            format_number(row.worst, "", 2),
+            f"x = {format_number(row.at, digits=3)}",
+        )
         for row in agreement.rows
     ]
     return {"model": str(getattr(agreement.model, "name", agreement.model)), "rows": rows}

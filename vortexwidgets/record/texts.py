@@ -78,15 +78,28 @@ def full_text(estimate: Estimate) -> str:
 
 
 def in_unit_of(whole: float, part: float, unit: str) -> str:
-    """Return a part of a whole in the unit that suits the whole, so that parts can be compared.
+    """Return a part of a whole in the unit and to the decimals that suit the whole, so that parts can be compared.
 
     Examples
     --------
-    >>> in_unit_of(1300.0, 71.23, "Pa")
-    '0.0712 kPa'
+    >>> in_unit_of(1300.0, 71.23, "Pa"), in_unit_of(1300.0, 0.07, "Pa"), in_unit_of(1300.0, 1300.0, "Pa")
+    ('0.07 kPa', '0.00 kPa', '1.30 kPa')
     """
     scale = scale_for(unit, whole)
-    return f"{float(f'{part / scale.size:.3g}'):g} {scale.text}".rstrip()
+    size = abs(whole) / scale.size
+    decimals = max(2 - math.floor(math.log10(size)), 0) if 0.0 < size < math.inf else 2
+    return f"{part / scale.size:.{decimals}f} {scale.text}".rstrip()
+
+
+def p_value_text(chance: float) -> str:
+    """Return a p-value as text; below the last digit that a chi² test can bear only that.
+
+    Examples
+    --------
+    >>> p_value_text(0.4834), p_value_text(8e-26), p_value_text(0.0)
+    ('0.48', '< 0.0001', '< 0.0001')
+    """
+    return "< 0.0001" if chance < 1e-4 else format_number(chance, "", 2)
 
 
 def shown(name: str, value: Any) -> str:

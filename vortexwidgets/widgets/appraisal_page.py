@@ -6,6 +6,7 @@ import html
 from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING
 
+from vortexwidgets.consequences.consequence import chance_text
 from vortexwidgets.formatting import format_estimate, format_number
 
 if TYPE_CHECKING:
@@ -105,13 +106,13 @@ def consequences_page(appraisal: Appraisal) -> str:
     """Return what follows, each with its criterion, verdict and caution."""
     blocks = []
     for item in appraisal.consequences:
-        chance = "" if item.probability is None else f" (probability {item.probability:.2g})"
+        chance = "" if item.probability is None else f" (probability {chance_text(item.probability)})"
         verdict = html.escape(f"{item.criterion.text}: {item.verdict}{chance}")
         mark = item.verdict.replace(" ", "-")
         blocks.append(
             f'<div class="vx-consequence vx-{html.escape(mark)}"><b>{html.escape(item.name)}</b>: '
             f"{html.escape(item.question)}<br><b>{html.escape(format_estimate(item.estimate))}</b>. {verdict}"
-            f"{sentences(item.notes)}"
+            f"{html_table([], [[name, format_estimate(value)] for name, value in item.details])}{sentences(item.notes)}"
             f'<p class="vx-quiet">{html.escape(item.caution)}</p></div>'
         )
     return "".join(blocks) or '<p class="vx-quiet">Nothing follows that this package could judge.</p>'
