@@ -40,6 +40,7 @@ class Samples:
     is_flat: bool  # a line that measures across itself, positive to its left
     places: frozenset[float]  # of the samples of a flat line, where a centre would be at distance 0
     prior: tuple[int, float, float] | None  # nonlinear parameter, value, standard uncertainty
+    extent: float  # size of the survey [m]
     station: npt.NDArray[np.intp] | None  # (N,) which reading each sample repeats; None where no reading is repeated
 
     @property
@@ -230,6 +231,7 @@ def _laid_out(survey: Survey, instrument: Instrument | None, background: Backgro
         is_flat=is_flat,
         places=frozenset(x.tolist()) if is_flat else frozenset(),
         prior=prior,
+        extent=float(max(np.ptp(x), np.ptp(y), np.abs(x).max(), np.abs(y).max())) or 1.0,
         station=_stations(survey),
     )
 

@@ -348,7 +348,8 @@ class Fit:
         """
         low, high = self._limits_of("core_pressure_drop", 0.95)
         constant = self.model.centre_pressure(*self._shape)
-        if not (low > 0.0 and math.isfinite(high)):
+        core_is_open = "core_radius" in self._open or self._problem.strength_name in self._open
+        if core_is_open or not (low > 0.0 and math.isfinite(high)):
             return Estimate(density * max(low, 0.0), math.nan, "core_pressure_drop", bound="lower")
         value = density * self._swirl_scale**2 * constant
         linear = value * self._log_uncertainty("core_pressure_drop")
@@ -460,6 +461,8 @@ class Fit:
                 gradient[position] = _relative_slope(self._measure(name), self._shape, index - SHAPE)
         used = gradient != 0.0
         part = self.covariance[np.ix_(used, used)]
+        if not np.isfinite(part).all():
+            return math.nan
         return math.sqrt(max(float(gradient[used] @ part @ gradient[used]), 0.0))
 
     @staticmethod

@@ -20,6 +20,8 @@ FloatArray = npt.NDArray[np.float64]
 # change of core radius and of each shape parameter, divided by itself).
 Tie: TypeAlias = Callable[[float, list[float]], tuple[float, list[float]]]
 
+Bounds: TypeAlias = tuple[float, float]
+
 _STEPS = 60
 # Squared distances to the minimum, in standard uncertainties.
 _QUADRATIC = 1e-6  # from here on the model of chi-square is taken at its word
@@ -31,6 +33,9 @@ _EPSILON = 1e-15  # of the power of the data: rounding of chi-square
 _ROUNDING = 1e-26  # of the power of the data: what is left when a model fits exactly
 _LARGEST = 1.0  # of a relative step
 _CANCELLED = 1e-8  # of the power of the data: below it chi-square as a difference of sums has too few digits
+
+# A core radius beyond these multiples of the survey's extent is solid-body rotation, or no core at all.
+_CORE = (1e-7, 1e5)
 
 # A shape parameter beyond these no longer changes a profile that anyone could measure.
 SHAPE_BOUNDS = (0.02, 200.0)
@@ -146,6 +151,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     columns = _Columns(problem, free, tie)
     state = columns.at(here)
     power, unit = problem.samples.power, 1.0 / len(problem.samples.target)
+    core_bounds = (_CORE[0] * problem.samples.extent, _CORE[1] * problem.samples.extent)
     damping = 0.0
     before: _State | None = None
     last = math.inf
@@ -158,7 +164,8 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
         steps += 1
         noise = unit * state.chi_square
         step, decrement = solved(state.reduced)
-        if len(here) > SHAPE and (stuck := _at_bounds(here, free, step)):
+        on_edge = len(here) > SHAPE or not core_bounds[0] < here[CORE_RADIUS] < core_bounds[1]
+        if on_edge and (stuck := _at_bounds(here, free, step, core_bounds)):
             step, decrement = _without(state.reduced, stuck)
         elif before is not None and last < _NEAR * noise:
             bend = _bent(bend, before, state, free)
@@ -174,13 +181,13 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
             if before is not None and tie is None:
                 further = _share(step, _step_between(before.here, here, free))
                 gram = state.gram + further * (state.gram - before.gram)
-            here = _moved(here, free, step)
+            here = _moved(here, free, step, core_bounds)
             linear = back(state.upper, [state.strength * value for value in step])
             converged = True
             break
         if damping:
             step = _damped(state.reduced, damping)
-        trial = _moved(here, free, step)
+        trial = _moved(here, free, step, core_bounds)
         new = columns.at(trial)
         if new.chi_square <= state.chi_square + _EPSILON * power or decrement < _LEVEL * noise:
             if damping:
@@ -321,8 +328,8 @@ def _step_between(here: list[float], there: list[float], free: tuple[int, ...]) 
     ]
 
 
-def _moved(here: list[float], free: tuple[int, ...], step: list[float]) -> list[float]:
-    """Lengths of the centre move by core radii; positive parameters move by a factor."""
+def _moved(here: list[float], free: tuple[int, ...], step: list[float], core_bounds: Bounds) -> list[float]:
+    """Lengths of the centre move by core radii; positive parameters move by a factor, within their bounds."""
     there = here[:]
     for index, change in zip(free, step, strict=True):
         limit = 3.0 * _LARGEST if index < CORE_RADIUS else _LARGEST
@@ -331,18 +338,18 @@ def _moved(here: list[float], free: tuple[int, ...], step: list[float]) -> list[
         if index < CORE_RADIUS:
             there[index] += here[CORE_RADIUS] * change
         else:
-            there[index] *= math.exp(change)
-            if index >= SHAPE:
-                there[index] = min(max(there[index], SHAPE_BOUNDS[0]), SHAPE_BOUNDS[1])
+            low, high = core_bounds if index == CORE_RADIUS else SHAPE_BOUNDS
+            there[index] = min(max(there[index] * math.exp(change), low), high)
     return there
 
 
-def _at_bounds(here: list[float], free: tuple[int, ...], step: list[float]) -> list[int]:
-    """Positions of shape parameters that want to leave their bounds."""
-    low, high = SHAPE_BOUNDS
-    return [
-        position
-        for position, index in enumerate(free)
-        if index >= SHAPE
-        and ((here[index] >= high and step[position] > 0.0) or (here[index] <= low and step[position] < 0.0))
-    ]
+def _at_bounds(here: list[float], free: tuple[int, ...], step: list[float], core_bounds: Bounds) -> list[int]:
+    """Positions of parameters that want to leave their bounds."""
+    stuck = []
+    for position, index in enumerate(free):
+        if index >= CORE_RADIUS:
+            low, high = core_bounds if index == CORE_RADIUS else SHAPE_BOUNDS
+            outward = (here[index] >= high and step[position] > 0.0) or (here[index] <= low and step[position] < 0.0)
+            if outward:
+                stuck.append(position)
+    return stuck
