@@ -117,6 +117,13 @@ FILES: dict[str, tuple[str | bytes, str]] = {
     "a gain that is not one": (with_fact("velocity gain: 1.05 ± 0.01"), "is not 1"),
     "an absurd coverage factor": (with_fact("coverage factor: 95"), "coverage factor"),
     "negative probe": (with_fact("probe width: -2 mm"), "probe"),
+    "negative miss distance": (with_fact("miss distance: -5 mm"), "miss_distance must not be negative, got -0.005 m"),
+    "a miss distance beyond the survey": (with_fact("miss distance: 5 m"), "survey is only 0.12 m long"),
+    "three points": (HEAD + "-5,-1,0.03\n5,1,0.03\n9,0.8,0.03\n", "3 points"),
+    "four points of unknown scatter": (
+        numbers("position [mm],velocity [m/s]", "-9,-1.241", "-3,-0.822", "5,1.124", "12,1.154"),
+        "Too few points to rank models: 4 independent points, at least 6 needed",
+    ),
     "axes along one line": (with_fact("axes: x up, y down"), "same line"),
 }
 
@@ -195,6 +202,8 @@ def good(tmp_path):
         (["--wander", "-1 mm"], "--wander"),
         (["--probe-width", "1e400"], "--probe-width"),
         (["--miss-distance", "2 s"], "--miss-distance"),
+        (["--miss-distance", "-5"], "miss_distance must not be negative, got -5 m"),
+        (["--miss-distance", "5"], "miss_distance is 5 m, but the survey is only 0.12 m long"),
         (["--velocity-gain", "1.1 ± 0.1"], "--velocity-gain"),
         (["--models", "rankin"], "rankin"),
         (["--models", ""], "model"),
@@ -282,3 +291,12 @@ def test_the_installed_command_says_one_sentence(arguments, tmp_path):
     assert result.stdout == ""
     assert len(result.stderr.splitlines()) == 1
     assert list(tmp_path.iterdir()) == []
+
+
+def test_a_record_that_is_not_there_is_said_in_one_sentence(tmp_path):
+    from vortexwidgets.appraisal import load_appraisal
+
+    with pytest.raises(
+        FileNotFoundError, match=r"nope\.json cannot be read \(no such file.*; give the path of a record"
+    ):
+        load_appraisal(tmp_path / "nope.json")

@@ -502,13 +502,6 @@ def test_many_dropped_rows_with_one_reason_take_one_line(appraisal):
     assert len(text["set_aside"]) == 1
 
 
-def test_a_record_that_is_not_there_is_said_in_one_sentence(tmp_path):
-    with pytest.raises(
-        FileNotFoundError, match=r"nope\.json cannot be read \(no such file.*; give the path of a record"
-    ):
-        load_appraisal(tmp_path / "nope.json")
-
-
 def test_numbers_of_a_table_have_one_notation(appraisal):
     said = record_page.content(appraisal)
     for table in said["budgets"]:

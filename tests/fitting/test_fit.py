@@ -299,7 +299,13 @@ def test_samples_set_aside_are_not_used():
         ({"loss": "cauchy"}, "loss must be"),
         ({"start": {"radius": 1.0}}, "No parameter 'radius'"),
         ({"fixed": {"exponent": 2.0}}, "No parameter 'exponent'"),
-        ({"fixed": {"core_radius": -1.0}}, "must be positive"),
+        ({"fixed": {"core_radius": -1.0}}, "fixed: core_radius must be positive, got -1 m"),
+        ({"fixed": {"core_radius": np.inf}}, "fixed: core_radius must be a finite number"),
+        ({"start": {"core_radius": -1.0}}, "start: core_radius must be positive, got -1 m"),
+        ({"start": {"centre_x": np.nan}}, "start: centre_x must be a finite number"),
+        ({"model": "vatistas", "start": {"exponent": -1.0}}, "start: exponent must be positive, got -1"),
+        ({"model": "vatistas", "start": {"exponent": 2000.0}}, "exponent of Vatistas must lie between 0 and 1000"),
+        ({"model": 3}, "A model is named by text, got 3"),
     ],
 )
 def test_refusals(options, message):

@@ -100,6 +100,24 @@ def test_aicc_is_the_published_form():
         assert row.aicc == pytest.approx(expected[row.model.key] - lowest, abs=1e-9)
 
 
+def test_one_model_needs_no_list():
+    _, survey = outer_survey(seed=1)
+    assert [row.model.key for row in vx.rank_models(survey, "lamb-oseen")] == ["lamb-oseen"]
+    assert [row.model.key for row in vx.rank_models(survey, vx.MODELS["rankine"])] == ["rankine"]
+    with pytest.raises(ValueError, match="named by text, got 3"):
+        vx.rank_models(survey, 3)
+
+
+@pytest.mark.parametrize(("points", "uncertainty", "needed"), [(4, 0.1, 5), (4, None, 6), (5, None, 6)])
+def test_too_few_points_to_rank_are_refused_with_the_numbers(points, uncertainty, needed):
+    """AICc has N - k - 1 below its last term, and one parameter more with unknown scatter: N >= k + 2 or k + 3."""
+    vortex = vx.Vortex("lamb-oseen", circulation=1.0, core_radius=0.01)
+    line = np.linspace(-0.02, 0.03, points)
+    survey = vx.Survey.traverse(position=line, velocity=vortex.velocity(line, 0.0)[1], uncertainty=uncertainty)
+    with pytest.raises(vx.FitError, match=f"Too few points .* {points} independent points, at least {needed} needed"):
+        vx.rank_models(survey)
+
+
 def test_refusals():
     _, survey = outer_survey(seed=1)
     with pytest.raises(ValueError, match="cannot be ranked"):

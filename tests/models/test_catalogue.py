@@ -84,6 +84,15 @@ def test_unknown_names_are_refused_with_a_hint(name, message):
         model_named(name)
 
 
+def test_a_key_that_is_none_is_answered_with_the_closest():
+    with pytest.raises(KeyError, match="No model named 'lamb_oseen'; did you mean 'lamb-oseen'"):
+        MODELS["lamb_oseen"]
+    assert MODELS.get("lamb_oseen") is None
+    assert "lamb_oseen" not in MODELS
+    assert "lamb-oseen" in MODELS
+    assert "lamb-oseen" in repr(MODELS)
+
+
 def test_every_number_of_the_catalogue_is_reached_by_its_key():
     assert list(MODELS) == ["free", "forced", "rankine", "kaufmann", "vatistas", "lamb-oseen", "taylor", "burgers"]
     assert all(model.key == key for key, model in MODELS.items())

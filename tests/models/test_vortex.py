@@ -298,3 +298,11 @@ def test_refusals_of_the_fields():
         make("lamb-oseen").grown(viscosity=1e-6, time=-1.0)
     with pytest.raises(ValueError, match="kinematic_viscosity must be positive"):
         make("lamb-oseen").grown(viscosity=0.0, time=1.0)
+
+
+def test_text_is_no_radius():
+    vortex = vx.Vortex("lamb-oseen", circulation=1.0, core_radius=0.01)
+    with pytest.raises(ValueError, match="radius must be a number or an array of numbers in m, got 'a'"):
+        vortex.swirl("a")
+    with pytest.raises(ValueError, match="y must be a number"):
+        vortex.velocity(0.0, ["a"])

@@ -2,9 +2,9 @@ import dataclasses
 
 import numpy as np
 import pytest
-from vortexwidgets.uncertainty import Estimate
 
 from vortexwidgets.survey.survey import Survey, SurveyError
+from vortexwidgets.uncertainty import Estimate
 
 LINE = np.array([-0.02, -0.01, 0.0, 0.01, 0.02])
 
@@ -113,6 +113,12 @@ def test_gain_and_scale_are_one_with_an_uncertainty():
         ({"uncertainty": 0.0}, "uncertainty must be positive, got 0 m/s at sample 0"),
         ({"uncertainty": [0.1, 0.1, -0.1, 0.1, 0.1]}, "got -0.1 m/s at sample 2"),
         ({"uncertainty": np.nan}, "uncertainty must be positive, got nan"),
+        ({"velocity": ["fast"] * 5}, "velocity must be numbers in SI units, got .'fast'"),
+        ({"position": [1, [2]]}, "position must be numbers in SI units"),
+        ({"uncertainty": "small"}, "uncertainty must be numbers in SI units, got 'small'"),
+        ({"pressure": ["low"] * 5}, "pressure must be numbers in SI units"),
+        ({"miss_distance": -0.005}, "miss_distance must not be negative, got -0.005 m; give the distance"),
+        ({"miss_distance": 5.0}, "miss_distance is 5 m, but the survey is only .* m long"),
         ({"pressure": [1.0]}, "pressure has 1 values for 5 positions"),
     ],
 )
@@ -164,3 +170,17 @@ def test_simulated_noise_is_seeded_and_stated():
 def test_a_survey_says_what_it_is():
     text = str(traverse(title="bench").without([1], "by hand"))
     assert text == "bench: traverse survey, 4 stations over 0.04 m, 4 samples in the plane, 1 set aside"
+
+
+@pytest.mark.parametrize("call", ["fit_survey", "rank_models", "appraise"])
+def test_a_file_name_is_no_survey(call):
+    from pathlib import Path
+
+    import vortexwidgets as vx
+
+    more = ["lamb-oseen"] if call == "fit_survey" else []
+    for given in ("bench.csv", Path("bench.csv")):
+        with pytest.raises(SurveyError, match=r"got the file name 'bench\.csv'; read it first: vx\.read_survey"):
+            getattr(vx, call)(given, *more)
+    with pytest.raises(SurveyError, match="a survey is needed, got None; make one with"):
+        getattr(vx, call)(None, *more)

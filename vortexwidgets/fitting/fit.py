@@ -22,6 +22,8 @@ from vortexwidgets.fitting.problem import (
 from vortexwidgets.fitting.result import Fit, FitError, Loss, Status, Uncertainties
 from vortexwidgets.fitting.separable import Solution, misfit, solve
 from vortexwidgets.fitting.starting import search
+from vortexwidgets.quantities import QUANTITIES, check
+from vortexwidgets.survey.survey import require_survey
 
 if TYPE_CHECKING:
     from vortexwidgets.models.model import VortexModel
@@ -119,13 +121,15 @@ def fit_survey(
     FitError
         If no vortex is seen, or the iteration stops short of the minimum.
     ValueError
-        If the model cannot be fitted, a name is unknown, or there are fewer samples than parameters.
+        If the model cannot be fitted, a name is unknown, a number to start from or to hold is outside its range, or
+        there are fewer samples than parameters.
 
     Examples
     --------
     NIST StRD Misra1a is the Lamb-Oseen circulation law in disguise; its certified values are in
     ``tests/published/test_nist_misra1a.py``.
     """
+    require_survey(survey)
     model = _model(model)
     settings = settings_for(
         survey, instrument=instrument, background=background, uncertainties=uncertainties, loss=loss
@@ -156,9 +160,7 @@ def free_parameters(
     for name, value in (fixed or {}).items():
         if name not in names:
             raise ValueError(f"No parameter {name!r} to hold for {model.name}. Known: {', '.join(names)}.")
-        if names.index(name) >= CORE_RADIUS and not value > 0.0:
-            raise ValueError(f"fixed {name} must be positive, got {value}.")
-        held[names.index(name)] = float(value)
+        held[names.index(name)] = _usable(model, name, value, "fixed")
     return tuple([index for index in range(len(names)) if index not in held]), held
 
 
@@ -276,7 +278,7 @@ def _starts(
     wanted: dict[int, float] = {}
     for name, value in given.items():
         if name in names:
-            wanted[names.index(name)] = float(value)
+            wanted[names.index(name)] = _usable(problem.model, name, value, "start")
         elif name != problem.strength_name and name not in problem.samples.background_names:
             raise ValueError(f"No parameter {name!r} to start from. Known: {', '.join(names)}.")
     known = {**wanted, **held}
@@ -286,6 +288,21 @@ def _starts(
     found = search(problem, centre=(known.get(CENTRE_X), known.get(CENTRE_Y)), several=2)
     rest = tuple(index for index in free if index not in wanted)
     return starts_for(problem, rest, found, known)
+
+
+def _usable(model: VortexModel, name: str, value: float, why: str) -> float:
+    """Return a parameter that a fit can start from or hold; lengths and shapes are positive."""
+    shape = {parameter.name: parameter for parameter in model.shape}
+    try:
+        if name not in shape:
+            return check(name, value)
+        number = check(name, value) if name in QUANTITIES else float(value)
+    except (TypeError, ValueError) as error:
+        raise ValueError(f"{why}: {error}") from error
+    low, high = shape[name].valid
+    if not low < number < high:
+        raise ValueError(f"{why}: {name} of {model.name} must lie between {low:g} and {high:g}, got {number:g}.")
+    return number
 
 
 def _robust(problem: Problem, settings: Settings, solution: Solution) -> tuple[Problem, Solution]:
@@ -310,9 +327,9 @@ def _robust(problem: Problem, settings: Settings, solution: Solution) -> tuple[P
 
 
 def _model(model: str | VortexModel) -> VortexModel:
-    from vortexwidgets.models.catalogue import MODELS, model_named
+    from vortexwidgets.models.catalogue import model_named
 
-    chosen = (MODELS.get(model) or model_named(model)) if isinstance(model, str) else model
+    chosen = model_named(model)
     if not chosen.ranked:
         raise ValueError(
             f"{chosen.name} cannot be fitted: it has no core radius or no pressure on the axis. "

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -21,6 +21,7 @@ from vortexwidgets.fitting.fit import (
 from vortexwidgets.fitting.result import Fit, FitError, Loss, Status, Uncertainties
 from vortexwidgets.fitting.starting import search
 from vortexwidgets.formatting import table
+from vortexwidgets.survey.survey import require_survey
 
 if TYPE_CHECKING:
     from vortexwidgets.fitting.problem import Background
@@ -116,7 +117,7 @@ class Ranking:
 
 def rank_models(
     survey: Survey,
-    models: Sequence[str | VortexModel] | None = None,
+    models: Sequence[str | VortexModel] | str | VortexModel | None = None,
     *,
     instrument: Instrument | None = None,
     background: Background | None = None,
@@ -131,8 +132,8 @@ def rank_models(
     survey : Survey
         Included in-plane samples are used.
     models : sequence of str or VortexModel, optional
-        Which to rank; all ranked models of the catalogue by default. Models with one and the same swirl profile are
-        ranked once, under all their names.
+        Which to rank, one alone also without a list; all ranked models of the catalogue by default. Models with one and
+        the same swirl profile are ranked once, under all their names.
     instrument, background, uncertainties, loss, fixed
         As for `fit_survey`.
 
@@ -144,7 +145,7 @@ def rank_models(
     Raises
     ------
     FitError
-        If no model can be fitted, or no vortex is seen.
+        If no model can be fitted, no vortex is seen, or there are too few points for the criterion of any model.
 
     Notes
     -----
@@ -159,6 +160,7 @@ def rank_models(
     .. [1] C. M. Hurvich and C.-L. Tsai, Biometrika 76 (1989) 297-307.
     .. [2] K. P. Burnham and D. R. Anderson, Model Selection and Multimodel Inference, 2nd ed., Springer, 2002, ch. 2.
     """
+    require_survey(survey)
     settings = settings_for(
         survey, instrument=instrument, background=background, uncertainties=uncertainties, loss=loss
     )
@@ -173,6 +175,8 @@ def rank_models(
         raise FitError(f"{Status.NO_VORTEX.value} {LOOK_AGAIN}", kept[0][2])
     known = settings.uncertainties == "absolute"
     criteria = np.array([_aicc(fit, known=known) for _, _, fit in kept])
+    if not np.any(np.isfinite(criteria)):
+        raise FitError(_too_few([fit for _, _, fit in kept], known=known))
     criteria -= criteria.min()
     weights = np.exp(-0.5 * criteria)
     weights /= weights.sum()
@@ -185,14 +189,17 @@ def rank_models(
     return Ranking(tuple(rows), _criterion(known=known), tuple(failures))
 
 
-def distinct_profiles(models: Sequence[str | VortexModel] | None = None) -> list[tuple[VortexModel, tuple[str, ...]]]:
+def distinct_profiles(
+    models: Sequence[str | VortexModel] | str | VortexModel | None = None,
+) -> list[tuple[VortexModel, tuple[str, ...]]]:
     """Models to rank, each with every name of its profile."""
     from vortexwidgets.models.catalogue import MODELS, model_named
 
     if models is None:
         chosen = [model for model in MODELS.values() if model.ranked]
     else:
-        chosen = [model_named(model) if isinstance(model, str) else model for model in models]
+        named = models if isinstance(models, Iterable) and not isinstance(models, str) else [models]
+        chosen = [model_named(model) for model in named]
         for model in chosen:
             if not model.ranked:
                 raise ValueError(
@@ -231,6 +238,17 @@ def _fits(
             failures.append(f"{model.name}: {Status.STOPPED.value}")
         fits.append(fit if fit.converged else None)
     return fits, failures
+
+
+def _too_few(fits: Sequence[Fit], *, known: bool) -> str:
+    """Say how many points the criterion of the model with the fewest parameters needs."""
+    smallest = min(fits, key=lambda fit: len(fit.names))
+    points = smallest.degrees_of_freedom + len(smallest.names) if known else smallest.effective_samples
+    needed = len(smallest.names) + (2 if known else 3)
+    return (
+        f"Too few points to rank models: {points:g} independent points, at least {needed} needed for the "
+        f"{len(smallest.names)} parameters of {smallest.model.name}; add points, or fit one model with fit_survey."
+    )
 
 
 def _aicc(fit: Fit, *, known: bool) -> float:

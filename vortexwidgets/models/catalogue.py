@@ -4,8 +4,7 @@ from __future__ import annotations
 
 import difflib
 import re
-from collections.abc import Mapping
-from types import MappingProxyType
+from collections.abc import Iterable, Iterator, Mapping
 
 import sympy as sp
 
@@ -153,9 +152,32 @@ BURGERS = VortexModel(
     ),
 )
 
-MODELS: Mapping[str, VortexModel] = MappingProxyType(
-    {model.key: model for model in (FREE, FORCED, RANKINE, KAUFMANN, VATISTAS, LAMB_OSEEN, TAYLOR, BURGERS)}
-)
+
+class _Catalogue(Mapping[str, VortexModel]):
+    """Models by key; a key that is none is answered with the closest one."""
+
+    def __init__(self, models: Iterable[VortexModel]) -> None:
+        self._by_key = {model.key: model for model in models}
+
+    def __getitem__(self, key: str) -> VortexModel:
+        if key in self._by_key:
+            return self._by_key[key]
+        raise KeyError(_no_model(key))
+
+    def __contains__(self, key: object) -> bool:
+        return key in self._by_key
+
+    def __iter__(self) -> Iterator[str]:
+        return iter(self._by_key)
+
+    def __len__(self) -> int:
+        return len(self._by_key)
+
+    def __repr__(self) -> str:
+        return f"<Models: {', '.join(self)}>"
+
+
+MODELS: Mapping[str, VortexModel] = _Catalogue((FREE, FORCED, RANKINE, KAUFMANN, VATISTAS, LAMB_OSEEN, TAYLOR, BURGERS))
 """Every published model by its key."""
 
 _ALSO_CALLED = {
@@ -197,15 +219,24 @@ def model_named(name: str | VortexModel) -> VortexModel:
     """
     if isinstance(name, VortexModel):
         return name
+    if isinstance(name, str):
+        key = name if name in MODELS else _known_names().get(_plain(name))
+        if key is not None:
+            return MODELS[key]
+    raise ValueError(_no_model(name))
+
+
+def _no_model(name: object) -> str:
     if not isinstance(name, str):
-        raise ValueError(f"A model is named by text, got {name!r:.60}. Known models: {', '.join(MODELS)}.")
-    plain = _plain(name)
-    known = {_plain(key): key for key in MODELS} | _ALSO_CALLED
-    if plain in known:
-        return MODELS[known[plain]]
-    close = difflib.get_close_matches(plain, known, n=1)
+        return f"A model is named by text, got {name!r:.60}. Known models: {', '.join(MODELS)}."
+    known = _known_names()
+    close = difflib.get_close_matches(_plain(name), known, n=1)
     hint = f"; did you mean '{known[close[0]]}'?" if close else "."
-    raise ValueError(f"No model named {name!r:.60}{hint} Known models: {', '.join(MODELS)}.")
+    return f"No model named {name!r:.60}{hint} Known models: {', '.join(MODELS)}."
+
+
+def _known_names() -> dict[str, str]:
+    return {_plain(key): key for key in MODELS} | _ALSO_CALLED
 
 
 def _plain(name: str) -> str:

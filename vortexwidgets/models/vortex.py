@@ -173,7 +173,7 @@ class Vortex:
         Raises
         ------
         ValueError
-            If a radius is negative.
+            If a radius is negative or no number.
         """
         return self._of("swirl", radius, self._scale)
 
@@ -193,7 +193,7 @@ class Vortex:
         Raises
         ------
         ValueError
-            If a radius is negative.
+            If a radius is negative or no number.
         """
         return self._of("vorticity", radius, self._scale / self._length)
 
@@ -213,7 +213,7 @@ class Vortex:
         Raises
         ------
         ValueError
-            If a radius is negative.
+            If a radius is negative or no number.
         """
         return self._of("enclosed_circulation", radius, 2.0 * math.pi * self._length * self._scale)
 
@@ -251,10 +251,13 @@ class Vortex:
         -------
         u, v : ndarray
             [m/s]
+
+        Raises
+        ------
+        ValueError
+            If a coordinate is no number.
         """
-        dx, dy = np.broadcast_arrays(
-            np.asarray(x, dtype=float) - self.centre[0], np.asarray(y, dtype=float) - self.centre[1]
-        )
+        dx, dy = np.broadcast_arrays(_numbers(x, "x") - self.centre[0], _numbers(y, "y") - self.centre[1])
         radius = np.hypot(dx, dy)
         off_axis = np.where(radius > 0.0, radius, self._length)
         rate = self.swirl(off_axis) / off_axis
@@ -319,7 +322,7 @@ class Vortex:
         return value / (2.0 * math.pi * self._length) if name == "circulation" else value
 
     def _of(self, quantity: Any, radius: npt.ArrayLike, scale: float) -> FloatArray:
-        r = np.asarray(radius, dtype=np.float64)
+        r = _numbers(radius, "radius")
         if r.size and r.min() < 0.0:
             raise ValueError(f"radius must not be negative, got {r.min():g} m; give the distance from the axis.")
         if scale == 0.0:
@@ -329,6 +332,13 @@ class Vortex:
 
     def _with(self, core_radius: float, strength: tuple[str, float]) -> Vortex:
         return Vortex(self.model, strength=strength, core_radius=core_radius, centre=self.centre, shape=self.shape)
+
+
+def _numbers(values: npt.ArrayLike, name: str) -> FloatArray:
+    try:
+        return np.asarray(values, dtype=np.float64)
+    except (TypeError, ValueError):
+        raise ValueError(f"{name} must be a number or an array of numbers in m, got {values!r:.60}.") from None
 
 
 def _rebuild(

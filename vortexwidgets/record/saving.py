@@ -127,6 +127,11 @@ def load_json(path: str | Path, registry: Mapping[str, type]) -> Any:
     source = Path(path)
     try:
         text = source.read_bytes().decode("utf-8-sig")
+    except OSError as error:
+        why = (error.strerror or str(error)).lower()
+        raise type(error)(
+            f"{source} cannot be read ({why}); give the path of a record that appraisal.save('record.json') wrote."
+        ) from error
     except UnicodeDecodeError as error:
         raise ValueError(f"{source.name} is not text (byte {error.start}); give a JSON record.") from error
     try:

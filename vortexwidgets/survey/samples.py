@@ -72,9 +72,18 @@ class Provenance:
     notes: tuple[str, ...] = ()
 
 
+def as_numbers(values: ArrayLike, name: str) -> FloatArray:
+    """Turn what was given for an argument into an array of numbers."""
+    try:
+        return np.asarray(values, dtype=float)
+    except (TypeError, ValueError):
+        shown = repr(values) if len(repr(values)) <= 60 else repr(values)[:57] + "..."
+        raise SurveyError(f"{name} must be numbers in SI units, got {shown}; NaN stands for a missing value.") from None
+
+
 def own_column(values: ArrayLike, shape: tuple[int, ...], name: str) -> FloatArray:
     """Copy a column, check its shape and lock it."""
-    array = np.array(values, dtype=float)
+    array = np.array(as_numbers(values, name))
     if array.shape != shape:
         raise SurveyError(f"{name} has shape {array.shape}, expected {shape}: one entry per sample.")
     array.setflags(write=False)
@@ -130,6 +139,21 @@ def stated_estimate(given: Given, quantity: str) -> Estimate:
         raise SurveyError(str(error)) from error
 
 
+def check_miss_distance(missed: Estimate, x: FloatArray) -> None:
+    """Refuse a miss distance that is negative, or so large that the line saw no vortex."""
+    extent = float(np.ptp(x))
+    if missed.value < 0.0:
+        raise SurveyError(
+            f"miss_distance must not be negative, got {missed.value:g} m; give the distance between line and axis "
+            "without a sign."
+        )
+    if missed.value > extent:
+        raise SurveyError(
+            f"miss_distance is {missed.value:g} m, but the survey is only {extent:g} m long, so its line passed far "
+            "from the vortex; check the unit (a bare number is in m), or leave it out if it is not known."
+        )
+
+
 def factor_of_one(given: Given, quantity: str) -> Estimate:
     """Read the uncertainty that is common to all velocities, or to all positions."""
     estimate = stated_estimate(given, quantity)
@@ -169,15 +193,13 @@ def stacked_columns(
 ) -> dict[str, Any]:
     """Make the fields of a survey from one array per component; stations with a missing value are listed as dropped."""
     given = [
-        (np.asarray(values, dtype=float).ravel(), vector, name)
-        for values, vector, name in components
-        if values is not None
+        (as_numbers(values, name).ravel(), vector, name) for values, vector, name in components if values is not None
     ]
     for values, _, name in given:
         if values.shape != x.shape:
             raise SurveyError(f"{name} has {values.size} values for {x.size} positions; give one value per position.")
     spread = _spread(uncertainty, len(given), x.size)
-    static = None if pressure is None else np.asarray(pressure, dtype=float).ravel()
+    static = None if pressure is None else as_numbers(pressure, "pressure").ravel()
     if static is not None and static.shape != x.shape:
         raise SurveyError(
             f"pressure has {static.size} values for {x.size} positions; give one per position, NaN if none."
@@ -209,7 +231,7 @@ def _spread(uncertainty: ArrayLike | None, components: int, number: int) -> Floa
     """Spread the uncertainty over (components, number)."""
     if uncertainty is None:
         return None
-    given = np.asarray(uncertainty, dtype=float)
+    given = as_numbers(uncertainty, "uncertainty")
     if given.ndim == 2 and given.shape != (components, number):
         given = given.ravel()
     try:

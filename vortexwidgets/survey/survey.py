@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import os
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
@@ -18,7 +19,9 @@ from vortexwidgets.survey.samples import (
     FloatArray,
     Provenance,
     SurveyError,
+    as_numbers,
     check_indices,
+    check_miss_distance,
     check_samples,
     checked_facts,
     factor_of_one,
@@ -31,7 +34,7 @@ from vortexwidgets.uncertainty import Estimate, Given
 if TYPE_CHECKING:
     from vortexwidgets.models.vortex import Vortex
 
-__all__ = ["DroppedRow", "Geometry", "Provenance", "Survey", "SurveyError"]
+__all__ = ["DroppedRow", "Geometry", "Provenance", "Survey", "SurveyError", "require_survey"]
 
 Geometry = Literal["radial", "traverse", "plane"]
 UNIT_GAIN = Estimate(1.0, 0.0, "velocity_gain")
@@ -61,7 +64,8 @@ class Survey:
     geometry : {"radial", "traverse", "plane"}
         How the points lie: at known distances from the axis, on a line, or in a plane.
     miss_distance : Estimate, optional
-        Stated distance between the line of a traverse and the axis; None when it was not stated. [m]
+        Stated distance between the line of a traverse and the axis, not negative and not longer than the line; None
+        when it was not stated. [m]
     velocity_gain, position_scale : number, (value, standard uncertainty) or Estimate
         1 with the standard uncertainty that is common to all velocities or to all positions. It does not average out.
     facts : mapping
@@ -107,6 +111,7 @@ class Survey:
             object.__setattr__(self, name, factor_of_one(getattr(self, name), name))
         if self.miss_distance is not None:
             object.__setattr__(self, "miss_distance", stated_estimate(self.miss_distance, "miss_distance"))
+            check_miss_distance(self.miss_distance, self.x)
         aside = {int(index): str(reason) for index, reason in sorted(self.set_aside.items())}
         check_indices(aside, number)
         object.__setattr__(self, "set_aside", aside)
@@ -156,7 +161,7 @@ class Survey:
         >>> survey.points, survey.geometry
         (3, 'radial')
         """
-        distance = np.ravel(np.asarray(radius, dtype=float))
+        distance = np.ravel(as_numbers(radius, "radius"))
         if np.any(distance < 0.0):
             raise SurveyError(
                 f"radius must not be negative, got {distance.min():g} m; for positions on both sides of the axis use "
@@ -222,7 +227,7 @@ class Survey:
         >>> survey.points, survey.stations, survey.two_components
         (6, 3, True)
         """
-        line = np.ravel(np.asarray(position, dtype=float))
+        line = np.ravel(as_numbers(position, "position"))
         components: list[Component] = [
             (velocity, (0.0, 1.0, 0.0), "velocity"),
             (along, (1.0, 0.0, 0.0), "along"),
@@ -282,7 +287,7 @@ class Survey:
         >>> survey.points, survey.stations
         (12, 6)
         """
-        across, up = np.asarray(x, dtype=float), np.asarray(y, dtype=float)
+        across, up = as_numbers(x, "x"), as_numbers(y, "y")
         shape = np.shape(u)
         if across.ndim == up.ndim == 1 and len(shape) == 2 and shape == (up.size, across.size):
             across, up = np.meshgrid(across, up)
@@ -465,6 +470,25 @@ class Survey:
         if self.provenance.dropped:
             parts.append(f"{len(self.provenance.dropped)} rows dropped")
         return (f"{title}: " if title else "") + ", ".join(parts)
+
+
+def require_survey(value: object) -> Survey:
+    """Hand a survey back; say what to do where a file name or something else was given for one.
+
+    Raises
+    ------
+    SurveyError
+        If it is not a survey.
+    """
+    if isinstance(value, Survey):
+        return value
+    if isinstance(value, str | os.PathLike):
+        shown = repr(os.fspath(value))[:80]
+        raise SurveyError(f"a survey is needed, got the file name {shown}; read it first: vx.read_survey({shown}).")
+    raise SurveyError(
+        f"a survey is needed, got {value!r:.60}; make one with vx.read_survey, Survey.traverse, Survey.radial or "
+        "Survey.plane."
+    )
 
 
 def _same(one: object, other: object) -> bool:
