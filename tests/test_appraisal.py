@@ -225,6 +225,35 @@ def test_no_model_fits_is_the_answer_when_all_are_rejected():
     assert vx.appraise(appraisal.survey, fluid=vx.water(20.0)).summary()
 
 
+LINE = np.linspace(-0.1, 0.1, 41)
+NOTHING = {
+    "three points": ([-0.01, 0.0, 0.01], [-1.0, 0.0, 1.0], "leaves"),
+    "uniform flow": (LINE, 2.0 + 0.0 * LINE, "No vortex is seen"),
+    "uniform flow with noise": (LINE, 2.0 + np.random.default_rng(0).normal(0, 0.1, 41), "No vortex is seen"),
+    "noise": (LINE, np.random.default_rng(1).normal(0, 1.0, 41), "No vortex is seen"),
+    "still water": (LINE, 0.0 * LINE, "No vortex is seen"),
+}
+
+
+@pytest.mark.parametrize("case", NOTHING)
+def test_without_a_vortex_there_is_a_sentence_and_no_number(case):
+    position, velocity, words = NOTHING[case]
+    with pytest.raises((vx.FitError, ValueError), match=words):
+        vx.appraise(vx.Survey.traverse(position=position, velocity=velocity), fluid=vx.water(20.0))
+
+
+@pytest.mark.parametrize("noise", [0.0, 0.1])
+def test_solid_rotation_gives_the_drop_that_was_measured_as_a_least_value(noise):
+    """v = Ω x over ±R: ½ρΩ²R² lies within the survey (derived), and nothing is known of what lies outside."""
+    velocity = 100.0 * LINE + np.random.default_rng(2).normal(0, 1.0, 41) * noise
+    appraisal = vx.appraise(
+        vx.Survey.traverse(position=LINE, velocity=velocity, uncertainty=0.1, miss_distance=0.0), fluid=vx.water(20.0)
+    )
+    drop = appraisal.core_pressure_drop
+    assert drop.bound == "lower"
+    assert 0.9 * 0.5 * 998.2 * 100.0 <= drop.value <= 1.02 * 0.5 * 998.2 * 100.0
+
+
 def test_a_gas_expands_and_says_so():
     whirl = vx.Vortex("lamb-oseen", circulation=4000.0, core_radius=12.0)
     appraisal = vx.appraise(

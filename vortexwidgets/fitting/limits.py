@@ -48,6 +48,10 @@ class Profile:
         floor, ceiling : float
             A positive quantity beyond these is taken as zero or infinite.
         """
+        if self.positive and side > 0 and self.value >= ceiling:
+            return math.inf
+        if self.positive and side < 0 and self.value <= floor:
+            return 0.0
         step = self.step if math.isfinite(self.step) and self.step > 0.0 else abs(self.value)
         centre = math.log(max(self.value, floor)) if self.positive else self.value
         reach = step / math.exp(centre) if self.positive else step
