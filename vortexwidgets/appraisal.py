@@ -300,8 +300,9 @@ def appraise(
     survey : Survey
         Outliers are set aside by `screen` and listed.
     fluid, site, instrument : optional
-        What the survey's own facts do not say, or say wrongly. A fluid that nobody named is taken as water at
-        15 ± 5 °C, and the answer says so.
+        What the survey's own facts do not say, or say wrongly. A site and an instrument are completed by the facts,
+        field by field; a fluid counts as a whole. Facts that are not used are listed in the assumptions. A fluid that
+        nobody named is taken as water at 15 ± 5 °C, and the answer says so.
     models : sequence, optional
         Models to rank; all ranked ones of the catalogue by default.
     background, uncertainties, loss : optional
@@ -322,9 +323,9 @@ def appraise(
     require_survey(survey)
     models = [models] if isinstance(models, str) else models
     assumptions: list[str] = []
-    fluid = fluid if fluid is not None else fluid_of(survey, assumptions)
-    site = site if site is not None else site_of(survey)
-    instrument = instrument if instrument is not None else instrument_of(survey)
+    site = site_of(survey, site, assumptions)
+    fluid = fluid_of(survey, assumptions, site=site, given=fluid)
+    instrument = instrument_of(survey, instrument, assumptions)
     screened = screen(survey).survey
     settings = settings_for(
         screened, instrument=instrument, background=background, uncertainties=uncertainties, loss=loss

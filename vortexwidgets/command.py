@@ -25,6 +25,7 @@ DONE, AT_FAULT = 0, 2
 # Option -> fact, quantity, unit of a bare number.
 _FACTS = {
     "temperature": ("temperature", "temperature", "degC"),
+    "density": ("density", "density", "kg/m3"),
     "salinity": ("salinity", "salinity", "g/kg"),
     "ambient_pressure": ("ambient_pressure", "ambient_pressure", "Pa"),
     "surface_pressure": ("surface_pressure", "surface_pressure", "Pa"),

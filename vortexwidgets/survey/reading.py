@@ -53,7 +53,8 @@ def read_survey(path: str | os.PathLike[str], units: Mapping[str, str] | None = 
     behind the name, or in a row of their own. Ratios such as ``r/c`` and ``V/U∞`` need the facts ``length scale`` and
     ``free stream``.
 
-    *Facts.* ``title``, ``fluid``, ``temperature``, ``salinity``, ``ambient pressure``, ``surface pressure``, ``depth``,
+    *Facts.* ``title``, ``fluid``, ``temperature``, ``salinity``, ``density``, ``viscosity`` (kinematic), ``vapour
+    pressure``, ``surface tension`` (these replace the fluid's own), ``ambient pressure``, ``surface pressure``, ``depth``,
     ``submergence``, ``free stream``, ``orientation`` (surface, submerged, air), ``elevation``, ``gravity``, ``wander``,
     ``probe width``, ``averaging``, ``translation speed``, ``length scale``, ``reference radius``, ``tensile strength``,
     ``gas saturation``, ``inception``, ``miss distance``, ``velocity gain`` and ``position scale`` (1 ± u),
