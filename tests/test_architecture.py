@@ -36,6 +36,7 @@ ORDER = [
     "survey.reading",
     "survey.screening",
     "survey.instrument",
+    "fitting.kept",
     "fitting.problem",
     "fitting.elimination",
     "fitting.separable",

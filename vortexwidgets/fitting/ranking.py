@@ -107,7 +107,7 @@ class Ranking:
                 " = ".join(row.names),
                 f"{row.aicc:.1f}",
                 f"{100 * row.weight:.1f} %",
-                f"{row.p_value:.2g}" if row.p_value >= 1e-4 else "< 1e-4",
+                f"{row.p_value:.2g}" if row.p_value >= 1e-4 else "< 0.0001",
                 "rejected" if row.rejected else "not rejected",
             ]
             for row in self.rows
@@ -328,7 +328,7 @@ def _relative_tests(fits: Sequence[Fit]) -> list[tuple[float, str]]:
 
 
 def _chance(p: float) -> str:
-    return f"= {p:.2g}" if p >= 1e-4 else "< 1e-4"
+    return f"= {p:.2g}" if p >= 1e-4 else "< 0.0001"
 
 
 def _repeats(fit: Fit) -> tuple[float, int]:

@@ -5,12 +5,12 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass, field
 from enum import StrEnum
-from functools import cached_property
 from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 import numpy.typing as npt
 
+from vortexwidgets.fitting.kept import Kept
 from vortexwidgets.fitting.limits import Profile, null_chi_square, of_nonlinear, of_strength, of_swirl_scale
 from vortexwidgets.fitting.problem import CENTRE_X, CENTRE_Y, CORE_RADIUS, SHAPE, Background, Problem
 from vortexwidgets.fitting.separable import SHAPE_BOUNDS, Solution
@@ -89,13 +89,13 @@ class Fit:
 
     # What was found ------------------------------------------------------------------------------------------------
 
-    @cached_property
+    @Kept
     def _best(self) -> FloatArray:
         """Every free parameter at the minimum, determined or not."""
         solution = self._solution
-        return np.array([self._strength, *solution.linear[1:], *(solution.nonlinear[i] for i in solution.free)])
+        return np.array([self._strength, *solution.linear[1:], *[solution.nonlinear[i] for i in solution.free]])
 
-    @cached_property
+    @Kept
     def _relative_covariance(self) -> list[list[float]]:
         """Covariance by relative change of strength and nonlinear parameters, all taken as determined."""
         inverse = self._solution.inverse
@@ -126,7 +126,7 @@ class Fit:
     def _scale(self) -> list[float]:
         return [self._strength, *self._solution.scale[1:]]
 
-    @cached_property
+    @Kept
     def covariance(self) -> FloatArray:
         """Covariance of the free parameters, shape (P, P), SI units."""
         scale = np.array(self._scale)
@@ -141,14 +141,14 @@ class Fit:
                 covariance[part] = inverse * self._variance if self.loss == "linear" else self._sandwich(inverse, keep)
         return np.asarray(covariance * scale * scale[:, None])
 
-    @cached_property
+    @Kept
     def values(self) -> FloatArray:
         """Best values of the free parameters, NaN where undetermined."""
         if not self._open:
             return self._best
         return np.where([name in self._open for name in self.names], math.nan, self._best)
 
-    @cached_property
+    @Kept
     def standard_uncertainties(self) -> FloatArray:
         """Roots of the covariance's diagonal."""
         if self._open:
@@ -156,17 +156,17 @@ class Fit:
         relative = self._relative_covariance
         return np.array([abs(size) * math.sqrt(relative[i][i]) for i, size in enumerate(self._scale)])
 
-    @cached_property
+    @Kept
     def scatter(self) -> float:
         """Standard deviation of the weighted residuals: near 1 where stated uncertainties hold; without them in m/s."""
         return math.sqrt(self.chi_square / max(self.degrees_of_freedom, 1))
 
-    @cached_property
+    @Kept
     def undetermined(self) -> tuple[str, ...]:
         """Parameters for which the survey gives at best a one-sided limit."""
         return tuple(self._open)
 
-    @cached_property
+    @Kept
     def _open(self) -> dict[str, str]:
         """Undetermined parameters and the sentence for each."""
         if not self._is_seen:
@@ -197,7 +197,7 @@ class Fit:
         together = self._station_scatter
         return alone if together is None else max(alone, together[0])
 
-    @cached_property
+    @Kept
     def _station_scatter(self) -> tuple[float, int] | None:
         """Variance of the residuals from the means of repeated readings, and its degrees of freedom.
 
@@ -221,7 +221,7 @@ class Fit:
             return samples
         return together[1] + len(self.names)
 
-    @cached_property
+    @Kept
     def _is_seen(self) -> bool:
         null, added = null_chi_square(self._problem, uniform=CENTRE_X in self._solution.free)
         rise = null - self.chi_square
@@ -237,16 +237,15 @@ class Fit:
         freedom = max(self.degrees_of_freedom, 1)
         known = self.uncertainties == "absolute"
         chance = chdtrc(extra, max(rise, 0.0) / unit) if known else fdtrc(extra, freedom, max(rise, 0.0) / unit / extra)
-        return bool(
-            chance * samples < _NO_VORTEX
-        )  # noise has as many places to look like a vortex as there are samples
+        # Noise has as many places to look like a vortex as there are samples.
+        return bool(chance * samples < _NO_VORTEX)
 
     @property
     def converged(self) -> bool:
         """Whether the sum of squares was at rest."""
         return self._solution.converged
 
-    @cached_property
+    @Kept
     def status(self) -> str:
         """How the fit ended and what it could not determine, in sentences."""
         if not self._is_seen:
@@ -367,7 +366,7 @@ class Fit:
         """Centre of the vortex in the survey's plane. [m]"""
         return self._solution.nonlinear[CENTRE_X], self._solution.nonlinear[CENTRE_Y]
 
-    @cached_property
+    @Kept
     def vortex(self) -> Vortex:
         """The fitted vortex.
 
@@ -394,22 +393,22 @@ class Fit:
             **shape,
         )
 
-    @cached_property
+    @Kept
     def fitted(self) -> FloatArray:
         """Fitted velocity at the included in-plane samples, background and instrument included, shape (N,). [m/s]"""
         return np.asarray((self._problem.samples.target - self._solution.residuals) * self._problem.samples.uncertainty)
 
-    @cached_property
+    @Kept
     def residuals(self) -> FloatArray:
         """Measured less fitted velocity, shape (N,). [m/s]"""
         return np.asarray(self._solution.residuals * self._problem.samples.uncertainty)
 
-    @cached_property
+    @Kept
     def normalised_residuals(self) -> FloatArray:
         """Residuals over their uncertainties, shape (N,); over the scatter where that is unknown."""
         return np.asarray(self._solution.residuals / math.sqrt(self._variance or 1.0))
 
-    @cached_property
+    @Kept
     def radius(self) -> FloatArray:
         """Distance of the included in-plane samples from the centre, shape (N,). [m]"""
         x, y = self._problem.samples.position

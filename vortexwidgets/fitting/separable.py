@@ -5,13 +5,13 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cached_property
 from typing import TypeAlias
 
 import numpy as np
 import numpy.typing as npt
 
 from vortexwidgets.fitting.elimination import back, bent, inverted, reduced, solved
+from vortexwidgets.fitting.kept import Kept
 from vortexwidgets.fitting.problem import CORE_RADIUS, SHAPE, Problem
 
 FloatArray = npt.NDArray[np.float64]
@@ -27,7 +27,7 @@ _STEPS = 60
 _QUADRATIC = 1e-6  # from here on the model of chi-square is taken at its word
 _SLOW = 3  # steps in a row that hardly came closer, though all is but quadratic: a kink of the profile is there
 _NEAR = 9.0  # closer than this the curvature beyond first derivatives is learnt from the steps
-_REMAINING = 1e-14  # predicted after the next step: the iteration ends
+_REMAINING = 1e-10  # predicted after the next step: the iteration ends
 _LEVEL = 1e-9  # below this promise a step is taken without asking whether chi-square, by now rounding, fell
 _EPSILON = 1e-15  # of the power of the data: rounding of chi-square
 _ROUNDING = 1e-26  # of the power of the data: what is left when a model fits exactly
@@ -73,7 +73,7 @@ class Solution:
         prior = self.problem.samples.prior
         return value if prior is None or prior[0] not in self.free else value + _pull(prior, self.nonlinear) ** 2
 
-    @cached_property
+    @Kept
     def residuals(self) -> FloatArray:
         """Weighted residuals, shape (N,)."""
         response, _ = self.problem.columns(self.nonlinear, ())
