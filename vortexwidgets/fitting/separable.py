@@ -27,7 +27,7 @@ _STEPS = 60
 _QUADRATIC = 1e-6  # from here on the model of chi-square is taken at its word
 _SLOW = 3  # steps in a row that hardly came closer, though all is but quadratic: a kink of the profile is there
 _NEAR = 9.0  # closer than this the curvature beyond first derivatives is learnt from the steps
-_REMAINING = 1e-10  # predicted after the next step: the iteration ends
+_REMAINING = 1e-11  # predicted after the next step: the iteration ends
 _LEVEL = 1e-9  # below this promise a step is taken without asking whether chi-square, by now rounding, fell
 _EPSILON = 1e-15  # of the power of the data: rounding of chi-square
 _ROUNDING = 1e-26  # of the power of the data: what is left when a model fits exactly
@@ -157,6 +157,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
     last = math.inf
     bend: list[list[float]] | None = None
     linear = state.level
+    fallen = 0.0  # by which the last step, that asked for no evaluation, lowers chi-square
     gram: FloatArray | None = None
     converged = False
     steps = slow = 0
@@ -183,6 +184,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
                 gram = state.gram + further * (state.gram - before.gram)
             here = _moved(here, free, step, core_bounds)
             linear = back(state.upper, [state.strength * value for value in step])
+            fallen = decrement
             converged = True
             break
         if damping:
@@ -202,7 +204,7 @@ def solve(problem: Problem, start: list[float], free: tuple[int, ...], tie: Tie 
             break
     if tie is not None:
         linear = [tie(here[CORE_RADIUS], here[SHAPE:])[0], *linear]
-    return Solution(problem, here, free, linear, steps, converged, state.chi_square, gram)
+    return Solution(problem, here, free, linear, steps, converged, state.chi_square - fallen, gram)
 
 
 def misfit(problem: Problem, here: list[float]) -> float:
