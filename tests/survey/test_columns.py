@@ -1,6 +1,6 @@
 import pytest
 
-from vortexwidgets.survey.columns import is_unit, understand
+from vortexwidgets.survey.columns import is_unit, understand, usual_unit
 
 
 @pytest.mark.parametrize(
@@ -62,6 +62,35 @@ def test_a_coverage_factor_in_a_heading_is_taken_out(text, coverage):
 
 def test_a_coverage_of_95_percent_is_1_96():
     assert understand("expanded uncertainty (95 %) [m/s]").coverage == 1.96  # JCGM 100:2008, table G.1
+
+
+@pytest.mark.parametrize(
+    ("text", "coverage"),
+    [
+        ("U95 [m/s]", None),
+        ("U_95 [m/s]", None),
+        ("velocity U95 [m/s]", None),
+        ("expanded uncertainty [m/s]", None),
+        ("expanded uncertainty (k=2) [m/s]", 2.0),
+    ],
+)
+def test_an_expanded_uncertainty_is_known_as_one(text, coverage):
+    heading = understand(text)
+    assert (heading.role, heading.unit, heading.coverage, heading.expanded) == ("uncertainty", "m/s", coverage, True)
+
+
+def test_a_coverage_factor_makes_u_an_uncertainty():
+    assert (understand("U (k=2) [m/s]").role, understand("U (k=2) [m/s]").coverage) == ("uncertainty", 2.0)
+    assert understand("U [m/s]").role == "u"
+    assert not understand("uncertainty [m/s]").expanded
+
+
+@pytest.mark.parametrize(
+    ("written", "kind", "usual"),
+    [("MM", "length", "mm"), ("FT", "length", "ft"), ("M/S", "velocity", "m/s"), ("mm", "velocity", None)],
+)
+def test_capitals_lead_to_the_usual_unit_of_the_kind(written, kind, usual):
+    assert usual_unit(written, kind) == usual
 
 
 def test_a_unit_given_separately_counts_more():

@@ -147,6 +147,73 @@ def test_rms_with_samples_is_an_uncertainty_of_the_mean(survey_of):
     assert any("rms without a number of samples" in note for note in alone.provenance.notes)
 
 
+@pytest.mark.parametrize(
+    ("heading", "said"),
+    [
+        ("U95 [m/s]", "after division by k = 2, the usual coverage factor of an expanded uncertainty"),
+        ("expanded uncertainty [m/s]", "after division by k = 2, the usual coverage factor of an expanded uncertainty"),
+        ("U (k=2) [m/s]", "after division by k = 2"),
+    ],
+)
+def test_an_expanded_uncertainty_is_halved_and_said(survey_of, heading, said):
+    survey = survey_of(f"position [mm],velocity [m/s],{heading}\n-10,-1,0.2\n0,0,0.2\n10,1,0.4\n")
+    np.testing.assert_allclose(survey.uncertainty, [0.1, 0.1, 0.2])
+    assert survey.provenance.columns[2] == f"{heading} -> standard uncertainty {said}"
+
+
+def test_the_coverage_factor_of_the_file_counts_more_than_the_usual_one(survey_of):
+    survey = survey_of("# coverage factor: 4\nx [mm],v [m/s],U95 [m/s]\n-10,-1,0.2\n0,0,0.2\n10,1,0.4\n")
+    np.testing.assert_allclose(survey.uncertainty, [0.05, 0.05, 0.1])
+
+
+def test_what_looks_like_an_uncertainty_is_never_passed_over_in_silence(survey_of):
+    survey = survey_of("position [mm],velocity [m/s],U95 (velocity) [m/s]\n-10,-1,0.2\n0,0,0.2\n10,1,0.4\n")
+    assert survey.uncertainty is None
+    assert any("looks like an uncertainty but is not understood" in note for note in survey.provenance.notes)
+
+
+@pytest.mark.parametrize(
+    ("text", "lines"),
+    [
+        (
+            "# view: upstream\nr [mm],swirl [m/s]\n1,1\n2,2\n3,1\n",
+            (
+                "distance from the axis",
+                "swirl, positive counter-clockwise (sign turned, because the view is from upstream)",
+            ),
+        ),
+        (
+            "# axes: y down\nposition [mm],velocity [m/s]\n-1,1\n0,0\n1,-1\n",
+            (
+                "position along the line, the centre is fitted",
+                "component across the line, positive to the left of increasing position (sign turned, because the axes "
+                "are 'y down')",
+            ),
+        ),
+        (
+            "# view: upstream\n# axes: y down\nx [mm],y [mm],u [m/s],v [m/s]\n10,0,0,1\n0,10,-1,0\n-10,0,0,-1\n",
+            (
+                "position along x (sign turned, because the view is from upstream)",
+                "position along y (sign turned, because the axes are 'y down')",
+                "component along x (sign turned, because the view is from upstream)",
+                "component along y (sign turned, because the axes are 'y down')",
+            ),
+        ),
+        (
+            "# axes: x up, y left\nx [mm],y [mm],u [m/s],v [m/s]\n0,-10,1,0\n10,0,0,1\n0,10,-1,0\n",
+            (
+                "position along x (taken as pointing up, because the axes are 'x up')",
+                "position along y (taken as pointing left, because the axes are 'y left')",
+                "component along x (taken as pointing up, because the axes are 'x up')",
+                "component along y (taken as pointing left, because the axes are 'y left')",
+            ),
+        ),
+    ],
+)
+def test_the_line_of_a_column_says_what_was_turned_and_why(survey_of, text, lines):
+    assert tuple(line.partition(" -> ")[2] for line in survey_of(text).provenance.columns) == lines
+
+
 def test_uncertainties_per_component_and_common_ones(survey_of):
     survey = survey_of(
         "x [mm],y [mm],u [m/s],v [m/s],u uncertainty [m/s],v uncertainty (k=2) [cm/s]\n"
@@ -213,6 +280,11 @@ def test_facts_travel_with_the_survey(survey_of):
         ),
         ("position [mm],velocity [mm]\n1,1\n2,2\n3,3\n", r"column 'velocity \[mm\]'"),
         ("position [s],velocity [m/s]\n1,1\n2,2\n3,3\n", r"column 'position \[s\]'"),
+        (
+            "Position (MM),velocity [m/s]\n1,1\n2,2\n3,3\n",
+            r"'Position \(MM\)': 'MM' is not .* case sensitive, mm is meant\?\); write 'Position \[mm\]' in the header",
+        ),
+        ("# uncertainty: 2 %\nposition [mm],velocity [m/s]\n1,1\n2,2\n3,3\n", r"'uncertainty: 0\.05 m/s', or one that"),
         ("position [mm],velocity [wurst]\n1,1\n2,2\n3,3\n", r"column 'velocity \[wurst\]'"),
         ("alpha,beta\n1,1\n2,2\n3,3\n", "no column holds a velocity .* the headings are 'alpha', 'beta'"),
         ("alpha,velocity [m/s]\n1,1\n2,2\n3,3\n", "no column holds a position"),

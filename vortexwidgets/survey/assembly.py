@@ -103,7 +103,9 @@ def _radial(readings: Readings) -> dict[str, Any]:
     swirl = readings.first("swirl", "velocity", "v", "speed", "u", "w")
     axial = readings.first("axial", "w", besides=swirl)
     radius = readings.length("radius", "distance from the axis")
-    values = readings.velocity(swirl, "swirl, positive counter-clockwise") * _handedness(readings)
+    sign = _handedness(readings)
+    turned = _sign_turned(readings) if sign < 0.0 else ""
+    values = readings.velocity(swirl, "swirl, positive counter-clockwise" + turned) * sign
     along = None if axial is None else readings.velocity(axial, "velocity along the axis of the vortex")
     readings.drop_missing(radius, values)
     roles = [swirl] + ([axial] if axial else [])
@@ -128,7 +130,7 @@ def _traverse(readings: Readings, place: str) -> dict[str, Any]:
         )
     position = readings.length(place, "position along the line, the centre is fitted")
     meaning = "component across the line, positive to the left of increasing position"
-    velocity = readings.velocity(cross, meaning + (" (sign changed)" if sign < 0 else "")) * sign
+    velocity = readings.velocity(cross, meaning + (_sign_turned(readings) if sign < 0.0 else "")) * sign
     along = None if parallel is None else readings.velocity(parallel, "component along the line")
     third = None if axial is None else readings.velocity(axial, "velocity along the axis of the vortex")
     readings.drop_missing(position, velocity, *([along] if along is not None else []))
@@ -189,8 +191,12 @@ def _plane(readings: Readings, letters: list[str]) -> dict[str, Any]:
                 f"{_COMPONENT_ALONG[up]}; '{_COMPONENT_ALONG[letter]} [m/s]' is missing."
             )
     vectors = _picture(readings, axis)
-    place = {letter: readings.length(letter, f"position along {letter}") for letter in (right, up)}
-    flow = {letter: readings.velocity(_COMPONENT_ALONG[letter], f"component along {letter}") for letter in (right, up)}
+    turned = {letter: _turned(readings, letter, vectors[letter], is_right=letter == right) for letter in (right, up)}
+    place = {letter: readings.length(letter, f"position along {letter}{turned[letter]}") for letter in (right, up)}
+    flow = {
+        letter: readings.velocity(_COMPONENT_ALONG[letter], f"component along {letter}{turned[letter]}")
+        for letter in (right, up)
+    }
     third = readings.first("axial", _COMPONENT_ALONG[axis])
     out = None if third is None else readings.velocity(third, "velocity along the axis of the vortex")
     readings.drop_missing(*place.values(), *flow.values())
@@ -229,6 +235,31 @@ def _picture(readings: Readings, axis: str) -> dict[str, tuple[float, float]]:
     if stated:
         readings.note(f"axes '{stated}': turned to x right, y up")
     return {letter: (mirror * vector[0], vector[1]) for letter, vector in vectors.items()}
+
+
+def _turned(readings: Readings, letter: str, vector: tuple[float, float], *, is_right: bool) -> str:
+    """Say what became of a coordinate that does not point right, or up, as it usually does, and why."""
+    here, aside = vector if is_right else vector[::-1]
+    if here > 0.0:
+        return ""
+    parts = [part for part in readings.facts.text("axes").split(", ") if part.startswith(f"{letter} ")]
+    why = _because(readings, ", ".join(parts), mirrored=vector[0] != 0.0)
+    if here < 0.0:
+        return f" (sign turned{why})"
+    direction = ("up" if aside > 0.0 else "down") if is_right else ("right" if aside > 0.0 else "left")
+    return f" (taken as pointing {direction}{why})"
+
+
+def _sign_turned(readings: Readings) -> str:
+    why = _because(readings, readings.facts.text("axes"), mirrored=True)
+    return f" (sign turned{why or ', so that circulation is counter-clockwise against the axis'})"
+
+
+def _because(readings: Readings, axes: str, *, mirrored: bool) -> str:
+    reasons = [f"the axes are '{axes}'"] if axes else []
+    if mirrored and readings.facts.text("view") == "upstream":
+        reasons.append("the view is from upstream")
+    return f", because {' and '.join(reasons)}" if reasons else ""
 
 
 def _handedness(readings: Readings) -> float:

@@ -49,7 +49,8 @@ _NAMES: dict[str, tuple[str, ...]] = {
     ),
 }  # fmt: skip
 _ROLE = {name: role for role, names in _NAMES.items() for name in names}
-_SPREAD = r"(?:expanded |standard |std )?(?:uncertainty|unc|sigma|error|err)|sem|standard error|std err|stderr"
+_EXPANDED = r"u ?95(?: ?%)?|expanded (?:uncertainty|unc|error|err)"
+_SPREAD = rf"{_EXPANDED}|(?:standard |std )?(?:uncertainty|unc|sigma|error|err)|sem|standard error|std err|stderr"
 _SPREAD_ALONE = r"±|\+/?-|dv|delta v"
 _RMS = r"rms|std|sd|stdev|std dev|standard deviation|sdev"
 
@@ -71,6 +72,7 @@ class Heading:
 
     `role` is "" when the name is not known. `of` is the role that an uncertainty or an rms belongs to ("" = all).
     `unit` is None when none was stated, "" when the column is a ratio; `per` says to what the ratio was taken.
+    `expanded` is whether the heading says that an uncertainty is an expanded one, with or without its `coverage`.
     """
 
     text: str
@@ -80,6 +82,7 @@ class Heading:
     unit: str | None = None
     per: str = ""
     coverage: float | None = None
+    expanded: bool = False
 
     @property
     def kind(self) -> Kind:
@@ -125,7 +128,10 @@ def understand(text: str, unit: str | None = None) -> Heading:
         heading = replace(heading, unit=written_unit(unit))
         ratio = heading.unit in ("", "%") and heading.kind in ("length", "velocity")
         heading = replace(heading, per=(heading.per or "scale") if ratio else "")
-    return replace(heading, coverage=coverage)
+    if coverage is not None and heading.name.lower() == "u":  # "U (k=2)" is no velocity
+        heading = replace(heading, role="uncertainty")
+    expanded = heading.role == "uncertainty" and re.search(rf"(?:^|[^a-z])(?:{_EXPANDED})", _key(heading.name))
+    return replace(heading, coverage=coverage, expanded=bool(expanded))
 
 
 def written_unit(text: str) -> str:
@@ -135,6 +141,18 @@ def written_unit(text: str) -> str:
         return ""
     known = _SPEEDS.get(_minus(unit).lower())
     return known if known is not None else unit.replace("μ", "µ")
+
+
+def usual_unit(text: str, kind: Kind) -> str | None:
+    """Give the usual unit of a kind that differs from what was written by its capitals only, as "mm" for "MM"."""
+    unit = _minus(text.strip()).lower()
+    known = {"length": {name: name for name in _LENGTHS}, "velocity": _SPEEDS, "pressure": _PRESSURES}
+    return known.get(kind, {}).get(unit)
+
+
+def may_be_uncertainty(text: str) -> bool:
+    """Whether a heading that was not understood seems to mean an uncertainty."""
+    return bool(re.search(r"uncert|expanded|error|±|\+/-|\bu_?95", text, re.IGNORECASE))
 
 
 def is_unit(text: str) -> bool:
@@ -207,13 +225,18 @@ def _without_brackets(text: str, rest: str) -> Heading:
     return plain
 
 
-def _named(text: str, name: str) -> Heading:
-    """Look a name up, also as the uncertainty or the rms of something."""
+def _key(name: str) -> str:
+    """Write a name without signs and capitals."""
     key = name.strip().lower()
     for sign, word in (("θ", "theta"), ("ϑ", "theta"), ("φ", "phi"), ("σ", "sigma "), ("δ", "delta "), ("∞", "inf")):
         key = key.replace(sign, word)
-    of_something = re.fullmatch(r"u\s*\(\s*(\w+)\s*\)", key)
-    key = " ".join(re.sub(r"[_\-.:]+", " ", key).split())
+    return " ".join(re.sub(r"[_\-.:]+", " ", key).split())
+
+
+def _named(text: str, name: str) -> Heading:
+    """Look a name up, also as the uncertainty or the rms of something."""
+    of_something = re.fullmatch(r"u\s*\(\s*(\w+)\s*\)", name.strip().lower())
+    key = _key(name)
     key = re.sub(r"^(mean|average|avg|time averaged) | (mean|average|avg)$", "", key)
     if of_something and of_something.group(1) in _ROLE:
         return Heading(text, name.strip(), "uncertainty", of=_ROLE[of_something.group(1)])

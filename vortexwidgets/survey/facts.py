@@ -236,6 +236,11 @@ def _value(fact: str, key: str, text: str, where: str) -> str | float | Estimate
         default = "g/kg" if fact == "salinity" else None
         given = units.read_quantity(text, quantity, default_unit=default)
     except ValueError as error:
+        if fact == "uncertainty":
+            raise SurveyError(
+                f"{where}: {key} '{text[:60]}' is not a speed; write the standard uncertainty of every velocity as "
+                "'uncertainty: 0.05 m/s', or one that is common to all of them as 'velocity gain: 1.00 ± 0.02'."
+            ) from error
         raise SurveyError(f"{where}: {key}: {error}") from error
     return given if isinstance(given, Estimate) else Estimate(float(given), 0.0, quantity)
 

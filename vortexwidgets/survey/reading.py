@@ -49,17 +49,18 @@ def read_survey(path: str | os.PathLike[str], units: Mapping[str, str] | None = 
     -----
     *Columns.* A position along a line (``position``, ``x``), a radius (``r``) or two coordinates (``x``, ``y``); a
     velocity (``velocity``, ``swirl``, ``v_theta``, ``u``, ``v``, ``w``, ``along``, ``axial``); an ``uncertainty``, or
-    an ``rms`` with ``samples``; ``static pressure``; ``valid``, ``flag`` and ``remark``. Units stand in brackets,
-    behind the name, or in a row of their own. Ratios such as ``r/c`` and ``V/U∞`` need the facts ``length scale`` and
-    ``free stream``.
+    an ``rms`` with ``samples``, or an expanded uncertainty (``U95``, ``uncertainty (k=2)``), which is divided by its
+    coverage factor, 2 where none is stated; ``static pressure``; ``valid``, ``flag`` and ``remark``. Units stand in
+    brackets, behind the name, or in a row of their own. Ratios such as ``r/c`` and ``V/U∞`` need the facts ``length
+    scale`` and ``free stream``.
 
     *Facts.* ``title``, ``fluid``, ``temperature``, ``salinity``, ``density``, ``viscosity`` (kinematic), ``vapour
-    pressure``, ``surface tension`` (these replace the fluid's own), ``ambient pressure``, ``surface pressure``, ``depth``,
-    ``submergence``, ``free stream``, ``orientation`` (surface, submerged, air), ``elevation``, ``gravity``, ``wander``,
-    ``probe width``, ``averaging``, ``translation speed``, ``length scale``, ``reference radius``, ``tensile strength``,
-    ``gas saturation``, ``inception``, ``miss distance``, ``velocity gain`` and ``position scale`` (1 ± u),
-    ``uncertainty``, ``coverage factor``, ``samples``, ``axes`` (as ``y down``), ``view`` (``upstream``),
-    ``vortex axis``.
+    pressure``, ``surface tension`` (these replace the fluid's own), ``ambient pressure``, ``surface pressure``,
+    ``depth``, ``submergence``, ``free stream``, ``orientation`` (surface, submerged, air), ``elevation``,
+    ``gravity``, ``wander``, ``probe width``, ``averaging``, ``translation speed``, ``length scale``, ``reference
+    radius``, ``tensile strength``, ``gas saturation``, ``inception``, ``miss distance``, ``velocity gain`` and
+    ``position scale`` (1 ± u), ``uncertainty``, ``coverage factor``, ``samples``, ``axes`` (as ``y down``), ``view``
+    (``upstream``), ``vortex axis``.
 
     *Signs.* A traverse is positive to the left of increasing position, so that counter-clockwise circulation is
     positive, seen against the axis of the vortex. Rows without a value, with a marker such as 9.99e9, or flagged as

@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from vortexwidgets import units
-from vortexwidgets.survey.columns import Heading
+from vortexwidgets.survey.columns import Heading, may_be_uncertainty, usual_unit
 from vortexwidgets.survey.facts import Facts, fact_named
 from vortexwidgets.survey.samples import FARTHEST, FASTEST, FloatArray, SurveyError
 from vortexwidgets.uncertainty import Estimate, as_estimate
@@ -16,6 +16,7 @@ from vortexwidgets.uncertainty import Estimate, as_estimate
 _MARKERS = (-99.99, -999.0, -9999.0, -99999.0, -999.25, -32768.0, 999.0, 9999.0, 99999.0, 999.99)
 _HUGE = 1e9
 _BESIDE = {"remark": "remark of each row", "valid": "whether a row is valid", "flag": "whether a row is valid"}
+_USUAL_COVERAGE = 2.0  # of an expanded uncertainty that names none, also of "U95": common practice
 _EXAMPLE = {"length": "mm", "velocity": "m/s", "pressure": "kPa"}
 
 
@@ -175,7 +176,17 @@ class Readings:
         try:
             return units.factor(heading.unit or "", quantity)
         except ValueError as error:
-            raise SurveyError(f"{self.file}, column '{heading.text}': {error}") from error
+            # The remedy of a single value, "write for example '5 mm'", is of no use for a column.
+            what, found, _ = str(error).partition("; write for example")
+            usual = usual_unit(heading.unit or "", heading.kind)
+            if usual is not None and usual != heading.unit:
+                what += f" (prefixes and names of units are case sensitive, {usual} is meant?)"
+            unit = usual or _EXAMPLE.get(heading.kind, "m/s")
+            remedy = (
+                f"; write '{heading.name} [{unit}]' in the header, or give units={{'{heading.name}': '{unit}'}} "
+                f'(command line: --units "{heading.name}={unit}").'
+            )
+            raise SurveyError(f"{self.file}, column '{heading.text}': {what}{remedy if found else ''}") from error
 
     def _reference(self, heading: Heading) -> Estimate:
         """Find the length or velocity that a column of ratios was divided by."""
@@ -215,6 +226,12 @@ class Readings:
         columns = [self._uncertainty_of(role) for role in roles if role is not None]
         known = [values for values in columns if values is not None]
         if not known:
+            for item in self.series:
+                if item.heading.kind == "" and may_be_uncertainty(item.heading.text):
+                    self.note(
+                        f"'{item.heading.text}' looks like an uncertainty but is not understood, and is not used; name "
+                        "it 'uncertainty [m/s]', or 'uncertainty (k=2) [m/s]' where it is expanded"
+                    )
             return None
         if columns[0] is None:
             self.note("uncertainties of a part of the components only: not used, the scatter is estimated from the fit")
@@ -265,10 +282,12 @@ class Readings:
                 f"{self.file}: column '{heading.text}' is a percentage of something it does not name; give the "
                 "uncertainty in m/s, or as 'uncertainty/U∞ [%]' with the fact '# free stream: 12 m/s'."
             )
-        coverage = heading.coverage or self.facts.number("coverage_factor") or 1.0
+        stated = heading.coverage or self.facts.number("coverage_factor")
+        coverage = stated or (_USUAL_COVERAGE if heading.expanded else 1.0)
         coverage = coverage if meaning.startswith("standard") else 1.0
         scaled = np.asarray(item.values * self._scale(heading, "velocity") / divisor / coverage)
-        self.taken[heading.text] = meaning + (f" after division by k = {coverage:g}" if coverage != 1.0 else "")
+        usual = ", the usual coverage factor of an expanded uncertainty" if stated is None else ""
+        self.taken[heading.text] = meaning + (f" after division by k = {coverage:g}{usual}" if coverage != 1.0 else "")
         bad = np.flatnonzero((scaled <= 0.0) & [index not in self.reasons for index in range(len(self.rows))])
         if bad.size:
             raise SurveyError(
