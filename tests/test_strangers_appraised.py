@@ -18,7 +18,7 @@ def test_circulation_and_core_radius_lie_within_their_limits(name):
     fit = appraisal.ranking[truth["model"]].fit
     assert not appraisal.ranking[truth["model"]].rejected
     for quantity in ("circulation", "core_radius"):
-        low, high = fit.interval(quantity, 0.99)  # twelve files, two quantities: one in twenty would miss at 95 %
+        low, high = fit.interval(quantity, 0.95)
         assert low <= truth[quantity] <= high, f"{quantity}: {low} to {high}, truth {truth[quantity]}"
     centre = truth["centre"] if isinstance(truth["centre"], list) else [truth["centre"]]
     for axis, value in zip(("centre_x", "centre_y"), centre, strict=False):
