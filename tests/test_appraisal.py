@@ -225,6 +225,16 @@ def test_no_model_fits_is_the_answer_when_all_are_rejected():
     assert vx.appraise(appraisal.survey, fluid=vx.water(20.0)).summary()
 
 
+@pytest.mark.parametrize("share", [0.1, 0.55, 1.0])
+def test_a_miss_distance_that_cannot_be_ends_in_a_sentence(share):
+    """A line through the core, said to pass far from it: every model is rejected, and nothing else happens."""
+    survey = survey_of(TIP, geometry="traverse")
+    missed = dataclasses.replace(survey, miss_distance=share * float(np.ptp(survey.x)))
+    appraisal = vx.appraise(missed, fluid=vx.water(20.0))
+    assert appraisal.answer.startswith("No model fits")
+    assert appraisal.summary()
+
+
 LINE = np.linspace(-0.1, 0.1, 41)
 NOTHING = {
     "three points": ([-0.01, 0.0, 0.01], [-1.0, 0.0, 1.0], "leaves"),

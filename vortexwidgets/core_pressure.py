@@ -96,7 +96,9 @@ def share_beyond(vortex: Vortex, radius: float, *, reference_radius: float | Non
 
 def relative_to(drop: Estimate, vortex: Vortex, reference_radius: float | None) -> Estimate:
     """A core pressure drop from the far field, taken from the pressure at a radius instead. [Pa]"""
-    return drop if reference_radius is None else _scaled(drop, 1.0 - share_beyond(vortex, reference_radius))
+    if reference_radius is None or math.isnan(drop.value):
+        return drop
+    return _scaled(drop, 1.0 - share_beyond(vortex, reference_radius))
 
 
 def with_contribution(drop: Estimate, name: str, uncertainty: float) -> Estimate:

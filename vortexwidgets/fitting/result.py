@@ -345,6 +345,8 @@ class Fit:
         The uncertainty is the fit's; gain, density and the choice of model are added by `appraise`. Where the survey
         does not enter the core the estimate is a lower bound.
         """
+        if not self._is_seen:
+            return Estimate(math.nan, math.nan, "core_pressure_drop")
         low, high = self._limits_of("core_pressure_drop", 0.95)
         constant = self.model.centre_pressure(*self._shape)
         core_is_open = "core_radius" in self._open or self._problem.strength_name in self._open
