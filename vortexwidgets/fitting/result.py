@@ -129,6 +129,8 @@ class Fit:
     @Kept
     def covariance(self) -> FloatArray:
         """Covariance of the free parameters, shape (P, P), SI units."""
+        if not self._is_seen:
+            return np.full((len(self.names), len(self.names)), math.nan)
         scale = np.array(self._scale)
         covariance = np.array(self._relative_covariance)
         if self._open:
@@ -152,7 +154,8 @@ class Fit:
     def standard_uncertainties(self) -> FloatArray:
         """Roots of the covariance's diagonal."""
         if self._open:
-            return np.sqrt(self.covariance.diagonal())
+            variance = self.covariance.diagonal()
+            return np.sqrt(np.where(variance >= 0.0, variance, math.nan))
         relative = self._relative_covariance
         return np.array([abs(size) * math.sqrt(relative[i][i]) for i, size in enumerate(self._scale)])
 
@@ -318,9 +321,10 @@ class Fit:
 
     def estimate(self, name: str) -> Estimate:
         """A parameter with its standard uncertainty and its 95 % limits, as an Estimate."""
-        value, uncertainty = self.value(name), self.uncertainty(name)
+        value = self.value(name)
         if math.isnan(value) and not self._is_seen:
             return Estimate(math.nan, math.nan, _quantity(name))
+        uncertainty = self.uncertainty(name)
         low, high = self.interval(name)
         if math.isnan(value):
             if low > 0.0:
@@ -377,7 +381,7 @@ class Fit:
         from vortexwidgets.models.vortex import Vortex
 
         solution = self._solution
-        if "core_radius" in self.undetermined:
+        if "core_radius" in self.undetermined and self._is_seen:
             low, high = self._limits_of("core_radius", 0.95)
             edge = high if math.isfinite(high) else low
             if edge > 0.0:
