@@ -17,6 +17,8 @@ if TYPE_CHECKING:
 
 FloatArray = npt.NDArray[np.float64]
 
+_FEWEST = 4  # samples for two rings and something between them
+
 
 @dataclass(frozen=True)
 class DataDrop:
@@ -55,6 +57,10 @@ def data_drop(survey: Survey, fit: Fit, *, density: Estimate, model_drop: Estima
     drop a monotonic swirl can have there.
     """
     radius, swirl, noise = _swirl_of_samples(survey, fit)
+    if len(radius) < _FEWEST:
+        nothing = Estimate(math.nan, math.nan, "core_pressure_drop")
+        said = "Too few samples see the swirl for a drop straight from the data."
+        return DataDrop(nothing, math.nan, math.nan, math.nan, (said,))
     ring_r, ring_v, ring_u = _rings(radius, swirl, noise)
     square = ring_v**2 - ring_u**2
     log_r = np.log(ring_r)
