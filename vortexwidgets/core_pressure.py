@@ -229,7 +229,12 @@ def combined_drop(
     drops = [row.fit.core_pressure_drop(density.value) for row in rows]
     drops = [relative_to(drop, row.fit.vortex, beyond) for drop, row in zip(drops, rows, strict=True)]
     closed = [(row, drop) for row, drop in zip(rows, drops, strict=True) if drop.is_determined]
-    if len(closed) < len(rows) and sum(row.weight for row, _ in closed) < _CLOSED * sum(row.weight for row in rows):
+    # Weights anew among these rows: where the best of all is rejected, theirs in the ranking may be nothing.
+    least = min(row.aicc for row in rows)
+    above = {row.model.key: row.aicc - least if math.isfinite(least) else 0.0 for row in rows}
+    weight = {key: math.exp(-0.5 * min(value, 1400.0)) for key, value in above.items()}
+    share = sum(weight[row.model.key] for row, _ in closed) / sum(weight.values())
+    if len(closed) < len(rows) and share < _CLOSED:
         # Profiles that leave the core open leave the answer open: the shallowest of all lower limits stands.
         lowest = max(min(drop.interval(0.95)[0] for drop in drops), 0.0)
         relative = 1.96 * math.hypot(2.0 * gain.uncertainty, density.uncertainty / density.value)
@@ -239,7 +244,7 @@ def combined_drop(
     drops = [drop for _, drop in closed]
     values = np.array([drop.value for drop in drops])
     own = np.array([drop.uncertainty for drop in drops])
-    weights = np.array([row.weight for row, _ in closed])
+    weights = np.array([weight[row.model.key] for row, _ in closed])
     weights = weights / weights.sum()
     mean = float(weights @ values)
     budget = (
@@ -249,9 +254,9 @@ def combined_drop(
         Contribution("density", density.uncertainty / density.value * mean),
     )
     generator = np.random.default_rng(_SEED)
-    share = np.floor(weights * _DRAWS).astype(int)
-    share[int(weights.argmax())] += _DRAWS - int(share.sum())
-    draws = np.concatenate([_spread(drop, int(n), generator) for drop, n in zip(drops, share, strict=True) if n])
+    counts = np.floor(weights * _DRAWS).astype(int)
+    counts[int(weights.argmax())] += _DRAWS - int(counts.sum())
+    draws = np.concatenate([_spread(drop, int(n), generator) for drop, n in zip(drops, counts, strict=True) if n])
     draws = draws * np.exp(2.0 * gain.uncertainty * generator.standard_normal(_DRAWS))
     draws = draws * np.exp(density.uncertainty / density.value * generator.standard_normal(_DRAWS))
     total = math.sqrt(sum(part.uncertainty**2 for part in budget))

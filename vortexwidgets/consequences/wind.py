@@ -616,7 +616,8 @@ def draw(axes: Axes, consequence: Consequence) -> None:
                 fontsize=8.0,
             )
     axes.set_xlim(float(across[0]), float(across[-1]))
-    axes.set_ylim(1.08 * lowest, -0.08 * lowest)
+    depth = max(-lowest, 1e-3)  # a drop of nothing still has an axis
+    axes.set_ylim(-1.08 * depth, 0.08 * depth)
     if time.size:
         label_axis(axes, "x", "time from the passage of the axis", "s")
     else:

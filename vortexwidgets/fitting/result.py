@@ -29,6 +29,7 @@ Loss = Literal["linear", "huber", "soft_l1"]
 _TOO_SMALL, _TOO_LARGE = 1e-3, 1e3
 _PROBITS = np.array(PROBITS)
 _SUSPECT = 0.1  # relative standard uncertainty from which one-sidedness is looked for
+_FASTEST = 1e7  # m/s: a swirl scale that no flow has; samples of the far tail alone lead there
 _NO_VORTEX = 1e-3  # chance at which the drop of chi-square by a vortex would be noise
 
 
@@ -108,6 +109,8 @@ class Fit:
 
     def _sandwich(self, inverse: FloatArray, keep: Any) -> FloatArray:
         """Huber's covariance of a robust fit, whose rows carry the weights of the loss."""
+        if not np.isfinite(inverse).all():
+            return inverse
         rows = self._solution.jacobian[keep] * self._solution.residuals
         return np.asarray(inverse @ (rows @ rows.T) @ inverse)
 
@@ -356,6 +359,8 @@ class Fit:
         core_is_open = "core_radius" in self._open or self._problem.strength_name in self._open
         if core_is_open or not (low > 0.0 and math.isfinite(high)):
             return Estimate(density * max(low, 0.0), math.nan, "core_pressure_drop", bound="lower")
+        if abs(self._swirl_scale) > _FASTEST:
+            return Estimate(math.nan, math.nan, "core_pressure_drop")
         value = density * self._swirl_scale**2 * constant
         linear = value * self._log_uncertainty("core_pressure_drop")
         return Estimate(
@@ -516,9 +521,7 @@ class Fit:
         unit = math.sqrt(self._variance)
         distance = self._coverage_factor(level) * unit
         if name in self._problem.samples.background_names or self.loss != "linear" or distance == 0.0:
-            value = self._best[self.names.index(name)] if name in self.names else self.value(name)
-            half = self._coverage_factor(level) * self.uncertainty(name)
-            return float(value - half), float(value + half)
+            return self._linear_limits(name, self._coverage_factor(level))
         floor, ceiling = self._range_of(name)
         profile = self._profile(name)
         low = profile.limit(distance, -1, floor, ceiling)
@@ -527,6 +530,23 @@ class Fit:
             return low * low, high * high
         if name == "peak_swirl" and self._swirl_scale < 0.0:
             return -high, -low
+        return low, high
+
+    def _linear_limits(self, name: str, factor: float) -> tuple[float, float]:
+        """Limits from the covariance alone: of a robust loss, a background, or data without scatter."""
+        if name in self.names:
+            position = self.names.index(name)
+            value = float(self._best[position])
+            half = (
+                factor * abs(self._scale[position]) * math.sqrt(max(self._relative_covariance[position][position], 0.0))
+            )
+            return value - half, value + half
+        if name == "core_pressure_drop":
+            value = self._swirl_scale**2 * self.model.centre_pressure(*self._shape)
+        else:
+            value = self._swirl_scale * self.model.peak_of(*self._shape)[1]
+        spread = math.exp(min(factor * self._log_uncertainty(name), 700.0))
+        low, high = sorted((value / spread, value * spread))
         return low, high
 
     def _range_of(self, name: str) -> tuple[float, float]:
