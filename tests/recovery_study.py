@@ -178,10 +178,11 @@ def main(runs):
             print(f"| {label} | {100 * noise:g} | {100 * held:.1f} % | {100 * answered:.1f} % |", flush=True)
     print(
         "\nRankine's likelihood has corners at the samples, so its limits are a few per cent too narrow.\n"
-        "'Outside the catalogue' is the sum of two Lamb-Oseen vortices with cores of 0.7 and 1.6 times the nominal one. "
-        "With\nlittle noise about half of the surveys reject every model and give no number, which counts as a miss; with "
-        "more noise a\nwrong model passes, and its limits hold the truth as often as the table says. The envelope over the "
-        "models that are not\nrejected is reported beside the limits."
+        "'Outside the catalogue' is the sum of two Lamb-Oseen vortices with cores of 0.7 and 1.6 times the nominal "
+        "one.\n"
+        "With little noise about half of the surveys reject every model and give no number, which counts as a miss;\n"
+        "with more noise a wrong model passes, and its limits hold the truth as often as the table says. The envelope\n"
+        "over the models that are not rejected is reported beside the limits."
     )
 
 

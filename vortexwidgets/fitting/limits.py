@@ -168,6 +168,9 @@ def _without_vortex(samples: Samples, uniform: bool) -> tuple[float, int]:
         added = len(columns)
     if not columns:
         return samples.power, 0
+    if len(columns) == 1:
+        column = columns[0]
+        return samples.power - float(column @ samples.target) ** 2 / float(column @ column), added
     basis = np.array(columns)
     level = np.linalg.lstsq(basis.T, samples.target, rcond=None)[0]
     rest = samples.target - level @ basis

@@ -217,6 +217,7 @@ def _laid_out(survey: Survey, instrument: Instrument | None, background: Backgro
         prior = (CENTRE_Y, survey.miss_distance.value, survey.miss_distance.uncertainty)
     target = velocity / uncertainty
     is_flat = on_line and across and bool((toward_y > 0.0).all())
+    places = frozenset(x.tolist()) if is_flat else frozenset()
     return Samples(
         x=x,
         y=None if on_line else y,
@@ -229,10 +230,10 @@ def _laid_out(survey: Survey, instrument: Instrument | None, background: Backgro
         background=columns,
         background_names=names,
         is_flat=is_flat,
-        places=frozenset(x.tolist()) if is_flat else frozenset(),
+        places=places,
         prior=prior,
         extent=float(max(np.ptp(x), np.ptp(y), np.abs(x).max(), np.abs(y).max())) or 1.0,
-        station=_stations(survey),
+        station=None if len(places) == len(target) else _stations(survey),
     )
 
 
