@@ -2,10 +2,10 @@
 
 import numpy as np
 import pytest
-from vortexwidgets.models.catalogue import MODELS
 
 import vortexwidgets as vx
 from vortexwidgets.fitting.problem import Problem, lay_out
+from vortexwidgets.models.catalogue import MODELS
 
 FITTED = [key for key, model in MODELS.items() if model.ranked]
 INSTRUMENTS = {
