@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -98,7 +98,7 @@ def relative_to(drop: Estimate, vortex: Vortex, reference_radius: float | None) 
     """A core pressure drop from the far field, taken from the pressure at a radius instead. [Pa]"""
     if reference_radius is None or math.isnan(drop.value):
         return drop
-    return _scaled(drop, 1.0 - share_beyond(vortex, reference_radius))
+    return drop.scaled(1.0 - share_beyond(vortex, reference_radius))
 
 
 def with_contribution(drop: Estimate, name: str, uncertainty: float) -> Estimate:
@@ -256,31 +256,13 @@ def combined_drop(
     generator = np.random.default_rng(_SEED)
     counts = np.floor(weights * _DRAWS).astype(int)
     counts[int(weights.argmax())] += _DRAWS - int(counts.sum())
-    draws = np.concatenate([_spread(drop, int(n), generator) for drop, n in zip(drops, counts, strict=True) if n])
+    draws = np.concatenate([drop.draw(int(n), generator) for drop, n in zip(drops, counts, strict=True) if n])
     draws = draws * np.exp(2.0 * gain.uncertainty * generator.standard_normal(_DRAWS))
     draws = draws * np.exp(density.uncertainty / density.value * generator.standard_normal(_DRAWS))
     total = math.sqrt(sum(part.uncertainty**2 for part in budget))
     quantiles = from_draws(draws, "core_pressure_drop").quantiles
     estimate = Estimate(mean, total, "core_pressure_drop", budget=budget, quantiles=quantiles)
     return estimate, (float(values.min()), math.inf if open_ended else float(values.max()))
-
-
-def _spread(estimate: Estimate, number: int, generator: np.random.Generator) -> FloatArray:
-    return np.asarray(estimate.draw(number, generator), dtype=float)
-
-
-def _scaled(estimate: Estimate, factor: float) -> Estimate:
-    """An estimate times an exact positive factor."""
-    quantiles = None if estimate.quantiles is None else tuple(q * factor for q in estimate.quantiles)
-    budget = tuple(Contribution(part.name, part.uncertainty * factor) for part in estimate.budget)
-    return Estimate(
-        estimate.value * factor,
-        estimate.uncertainty * factor,
-        estimate.quantity,
-        budget=budget,
-        quantiles=quantiles,
-        bound=estimate.bound,
-    )
 
 
 def named_drops(drop: Estimate, vortex: Vortex, *, wander: float) -> tuple[CoreDrop, CoreDrop, CoreDrop]:
@@ -294,7 +276,7 @@ def named_drops(drop: Estimate, vortex: Vortex, *, wander: float) -> tuple[CoreD
         MEAN_PROFILE: "What integrating the mean swirl profile gives; too shallow where the vortex wanders.",
     }
     rows = [
-        CoreDrop(name, _scaled(drop, fractions[name] / deepest), texts[name])
+        CoreDrop(name, drop.scaled(fractions[name] / deepest), texts[name])
         for name in (INSTANTANEOUS, TAP, MEAN_PROFILE)
     ]
     return rows[0], rows[1], rows[2]
@@ -363,8 +345,6 @@ def core_pressure_of(drop: Estimate, ambient: Estimate, *, heat_capacity_ratio: 
 
 def circulation_at(fit: Fit, radius: float) -> Estimate:
     """Circulation within a radius, with the uncertainty of the fitted curve there. [m²/s]"""
-    from dataclasses import replace
-
     vortex = fit.vortex
     value = float(vortex.enclosed_circulation(radius))
     names = [name for name in fit.names if name in (fit._problem.strength_name, "core_radius", *vortex.shape)]

@@ -148,6 +148,29 @@ class Estimate:
         """Whether value and uncertainty are both known, and not just a limit."""
         return self.bound is None and math.isfinite(self.value) and math.isfinite(self.uncertainty)
 
+    def scaled(self, factor: float, quantity: str | None = None) -> Estimate:
+        """The estimate times an exact positive factor, as the same quantity or another.
+
+        Parameters
+        ----------
+        factor : float
+        quantity : str, optional
+            Key of the result.
+
+        Returns
+        -------
+        Estimate
+            With its budget, distribution and bound.
+        """
+        return replace(
+            self,
+            value=self.value * factor,
+            uncertainty=self.uncertainty * factor,
+            quantity=self.quantity if quantity is None else quantity,
+            budget=tuple(Contribution(part.name, part.uncertainty * factor) for part in self.budget),
+            quantiles=None if self.quantiles is None else tuple(value * factor for value in self.quantiles),
+        )
+
     def interval(
         self, level: float = 0.95, kind: Literal["symmetric", "shortest"] = "symmetric"
     ) -> tuple[float, float]:

@@ -3,13 +3,13 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 import numpy.typing as npt
 
-from vortexwidgets.uncertainty import Contribution, Estimate
+from vortexwidgets.uncertainty import Estimate
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -195,18 +195,10 @@ def scaled(estimate: Estimate, factor: float, quantity: str, *, without: str = "
         With its budget.
     """
     gone = sum(part.uncertainty**2 for part in estimate.budget if part.name == without)
-    uncertainty = math.sqrt(max(estimate.uncertainty**2 - gone, 0.0)) if gone else estimate.uncertainty
-    return Estimate(
-        estimate.value * factor,
-        uncertainty * factor,
-        quantity,
-        budget=tuple(
-            Contribution(part.name, part.uncertainty * factor) for part in estimate.budget if part.name != without
-        ),
-        quantiles=None if estimate.quantiles is None else tuple(number * factor for number in estimate.quantiles),
-        bound=estimate.bound,
-        degrees_of_freedom=estimate.degrees_of_freedom,
-    )
+    left = math.sqrt(max(estimate.uncertainty**2 - gone, 0.0)) if gone else estimate.uncertainty
+    kept = tuple(part for part in estimate.budget if part.name != without)
+    estimate = replace(estimate, uncertainty=left, budget=kept)
+    return estimate.scaled(factor, quantity)
 
 
 def undetermined(quantity: str) -> Estimate:

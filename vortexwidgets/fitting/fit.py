@@ -156,7 +156,7 @@ def free_parameters(
         missed = survey.miss_distance
         if missed is None or missed.uncertainty == 0.0:
             held = {CENTRE_Y: 0.0 if missed is None else missed.value}
-    names = _nonlinear_names(model)
+    names = nonlinear_names(model)
     for name, value in (fixed or {}).items():
         if name not in names:
             raise ValueError(f"No parameter {name!r} to hold for {model.name}. Known: {', '.join(names)}.")
@@ -262,19 +262,20 @@ def _refuse_failure(fit: Fit) -> None:
 
 
 @lru_cache(maxsize=64)
-def _nonlinear_names(model: VortexModel) -> tuple[str, ...]:
+def nonlinear_names(model: VortexModel) -> tuple[str, ...]:
+    """Names of a model's nonlinear parameters, in the order of the problem."""
     return ("centre_x", "centre_y", "core_radius", *(parameter.name for parameter in model.shape))
 
 
 def _names(problem: Problem, free: tuple[int, ...]) -> tuple[str, ...]:
-    names = _nonlinear_names(problem.model)
+    names = nonlinear_names(problem.model)
     return (problem.strength_name, *problem.samples.background_names, *[names[index] for index in free])
 
 
 def _starts(
     problem: Problem, free: tuple[int, ...], held: Mapping[int, float], given: Mapping[str, float]
 ) -> list[list[float]]:
-    names = _nonlinear_names(problem.model)
+    names = nonlinear_names(problem.model)
     wanted: dict[int, float] = {}
     for name, value in given.items():
         if name in names:

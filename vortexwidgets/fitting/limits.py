@@ -131,7 +131,7 @@ def of_swirl_scale(
 
     def tie(target: float) -> Tie:
         def swirl_scale(_core_radius: float, shape: list[float]) -> tuple[float, list[float]]:
-            slopes = [0.0, *(-_log_slope(measure, shape, which) for which in range(len(shape)))]
+            slopes = [0.0, *(-log_slope(measure, shape, which) for which in range(len(shape)))]
             return sign * target / measure(*shape), slopes
 
         return swirl_scale
@@ -142,7 +142,7 @@ def of_swirl_scale(
     return Profile(problem, minimum, value, step, True, at)
 
 
-def _log_slope(measure: Callable[..., float], shape: list[float], which: int) -> float:
+def log_slope(measure: Callable[..., float], shape: list[float], which: int) -> float:
     """D ln m / d ln (shape parameter), by a central difference."""
     h = 1e-5
     up, down = list(shape), list(shape)

@@ -14,6 +14,7 @@ from vortexwidgets.fitting.fit import (
     Settings,
     fit_problem,
     free_parameters,
+    nonlinear_names,
     problem_for,
     settings_for,
     starts_for,
@@ -225,7 +226,7 @@ def _fits(
     fits: list[Fit | None] = []
     failures: list[str] = []
     for model in models:
-        names = ("centre_x", "centre_y", "core_radius", *(parameter.name for parameter in model.shape))
+        names = nonlinear_names(model)
         free, held = free_parameters(survey, model, {n: v for n, v in fixed.items() if n in names})
         problem = problem_for(survey, model, settings)
         try:

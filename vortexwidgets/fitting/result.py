@@ -11,7 +11,7 @@ import numpy as np
 import numpy.typing as npt
 
 from vortexwidgets.fitting.kept import Kept
-from vortexwidgets.fitting.limits import Profile, null_chi_square, of_nonlinear, of_strength, of_swirl_scale
+from vortexwidgets.fitting.limits import Profile, log_slope, null_chi_square, of_nonlinear, of_strength, of_swirl_scale
 from vortexwidgets.fitting.problem import CENTRE_X, CENTRE_Y, CORE_RADIUS, SHAPE, Background, Problem
 from vortexwidgets.fitting.separable import SHAPE_BOUNDS, Solution
 from vortexwidgets.formatting import format_number
@@ -468,7 +468,8 @@ class Fit:
                 change = -power * self._problem.by_circulation + (name == "peak_radius")
                 gradient[position] = change / self._solution.nonlinear[CORE_RADIUS]
             elif (index := self._nonlinear_index(label)) is not None and index >= SHAPE:
-                gradient[position] = _relative_slope(self._measure(name), self._shape, index - SHAPE)
+                slope = log_slope(self._measure(name), self._shape, index - SHAPE)
+                gradient[position] = slope / self._shape[index - SHAPE]
         used = gradient != 0.0
         part = self.covariance[np.ix_(used, used)]
         if not np.isfinite(part).all():
@@ -583,15 +584,6 @@ def two_sided_quantiles(value: float, low: float, high: float) -> tuple[float, .
         below, above = (value - low) / factor, (high - value) / factor
         table = value + _PROBITS * np.where(_PROBITS < 0.0, below, above)
     return tuple(table.tolist())
-
-
-def _relative_slope(measure: Any, shape: list[float], which: int) -> float:
-    """D ln m / d(shape parameter)."""
-    h = 1e-5 * shape[which]
-    up, down = list(shape), list(shape)
-    up[which] += h
-    down[which] -= h
-    return float((math.log(measure(*up)) - math.log(measure(*down))) / (2.0 * h))
 
 
 def _quantity(name: str) -> str:
